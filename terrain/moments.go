@@ -17,8 +17,7 @@ const (
 	// metric projection of the Earth uses.
 	MinSpacingM = 0.005
 
-	// MaxSpacingM keeps a voxel's own squares below 2^50 quanta², so that 2^13
-	// points always fit and Add needs no check for them.
+	// MaxSpacingM still leaves room for 7 378 points in a voxel: see MaxPoints.
 	MaxSpacingM = 5000.0
 )
 
@@ -43,6 +42,13 @@ func (l Lattice) SpacingM() float64 { return float64(l.edge) / QuantaPerMetre }
 
 // Quanta is the edge of a cell in quanta of 0.1 mm.
 func (l Lattice) Quanta() int64 { return l.edge }
+
+// MaxPoints is the number of points that fit one voxel: an offset is at most
+// half an edge, and with n·(edge/2)² ≤ 2^62 no sum overflows 63 bits.
+func (l Lattice) MaxPoints() int64 {
+	half := l.edge / 2
+	return 1 << 62 / (half * half)
+}
 
 // A Cell is the index of a voxel: floor(coordinate / spacing) on each axis.
 type Cell struct {
