@@ -1,0 +1,225 @@
+package fit
+
+import (
+	"container/heap"
+	"context"
+	"math"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"ledgework/terrain"
+)
+
+// Which side of a surface is air cannot be read off the surface itself. The
+// evidence, weakest last:
+//
+//   - sensors: the side that the nearest scanner stands on;
+//   - free space: the side on which a line along the normal meets no surface;
+//   - ground faces up more often than down.
+const (
+	sureCosine      = 0.35 // |cos| to the parent's normal above which a finer voxel inherits its side: 70°
+	freeSpaceCells  = 10   // length of the line along ±normal
+	freeSpaceStart  = 2    // cells passed over next to the surface itself
+	freeSpaceWeight = 0.5  // of one voxel's free space against one voxel facing straight up
+	graphReach      = 2    // cells: neighbours of the propagation graph, with gaps of one cell
+)
+
+// OrientCoarse turns the normals of planes, fitted at the voxels of x, to the
+// air side: propagated over the neighbour graph from most to least certain
+// (Hoppe et al. 1992, SIGGRAPH 26:71–78) and then, for each connected piece as
+// a whole, decided by the sum of the evidence at all its voxels. Sensors are
+// scanner positions in the working CRS and may be nil.
+//
+// It returns the share of the surface that lies in pieces whose evidence is
+// weak, which are then a guess.
+func OrientCoarse(ctx context.Context, x *terrain.Index, planes *LocalPlanes, sensors []r3.Vec) (weakShare float64, err error) {
+	n := x.Voxels().Len()
+	known := make([]bool, n)
+	var fitted, weak int
+	for start := range n {
+		if known[start] || !planes.Fitted(start) {
+			continue
+		}
+		if err := ctx.Err(); err != nil {
+			return 0, err
+		}
+		known[start] = true
+		piece := propagate(x, planes, known, []int32{int32(start)})
+		var votes float64
+		for _, i := range piece {
+			votes += evidence(x, planes.Normal[i], int(i), sensors)
+		}
+		if votes < 0 {
+			for _, i := range piece {
+				flip(planes, int(i))
+			}
+		}
+		fitted += len(piece)
+		// A tenth of a voxel's full vote, on average, is what a wall leaning
+		// back by 6° gives by facing up.
+		if math.Abs(votes) < 0.1*float64(len(piece)) {
+			weak += len(piece)
+		}
+	}
+	if fitted == 0 {
+		return 0, nil
+	}
+	return float64(weak) / float64(fitted), nil
+}
+
+func flip(p *LocalPlanes, i int) {
+	p.Normal[i] = r3.Scale(-1, p.Normal[i])
+	p.Offset[i] = -p.Offset[i]
+}
+
+// evidence is positive where n points into the air, of order 1.
+func evidence(x *terrain.Index, n r3.Vec, i int, sensors []r3.Vec) float64 {
+	p := x.Mean(i)
+	if len(sensors) > 0 {
+		var sum, total float64
+		for _, s := range sensors {
+			d := r3.Sub(s, p)
+			w := 1 / max(r3.Norm2(d), 1)
+			total += w
+			sum += w * r3.Dot(n, d) / max(r3.Norm(d), 1e-9)
+		}
+		return sum / total
+	}
+	behind, before := blocked(x, p, r3.Scale(-1, n)), blocked(x, p, n)
+	vote := n.Z
+	switch {
+	case behind && !before:
+		vote += freeSpaceWeight
+	case before && !behind:
+		vote -= freeSpaceWeight
+	}
+	return vote
+}
+
+// blocked reports whether a line from p along the unit vector n meets an
+// occupied cell.
+func blocked(x *terrain.Index, p, n r3.Vec) bool {
+	l := x.Voxels().Lattice
+	g := l.SpacingM()
+	for t := float64(freeSpaceStart); t <= freeSpaceCells; t += 0.5 {
+		if x.Find(l.CellOf(r3.Add(p, r3.Scale(t*g, n)))) >= 0 {
+			return true
+		}
+	}
+	return false
+}
+
+// OrientFrom turns the normals of planes, fitted at the voxels of x, by those
+// of a coarser level: parent gives each voxel's voxel there. A normal within
+// 70° of the parent's, either way round, takes its side; the others, on the
+// underside of a block for instance, take it from their neighbours, nearest
+// orientation first.
+func OrientFrom(ctx context.Context, x *terrain.Index, planes, coarse *LocalPlanes, parent []int32) error {
+	n := x.Voxels().Len()
+	known := make([]bool, n)
+	var sure []int32
+	for i := range n {
+		if !planes.Fitted(i) {
+			continue
+		}
+		d := r3.Dot(planes.Normal[i], coarse.Normal[parent[i]])
+		if d < 0 {
+			flip(planes, i)
+		}
+		known[i] = math.Abs(d) >= sureCosine
+	}
+	for i := range n {
+		if known[i] && hasUnknown(x, planes, known, i) {
+			sure = append(sure, int32(i))
+		}
+	}
+	if err := ctx.Err(); err != nil {
+		return err
+	}
+	propagate(x, planes, known, sure)
+	return ctx.Err()
+}
+
+// hasUnknown reports whether voxel i has a fitted neighbour that is not known.
+func hasUnknown(x *terrain.Index, planes *LocalPlanes, known []bool, i int) bool {
+	found := false
+	neighbours(x, i, func(j int) { found = found || !known[j] && planes.Fitted(j) })
+	return found
+}
+
+// neighbours calls f for the voxels within graphReach cells of voxel i.
+func neighbours(x *terrain.Index, i int, f func(j int)) {
+	c := x.Voxels().Cells[i]
+	for k := c.K - graphReach; k <= c.K+graphReach; k++ {
+		for j := c.J - graphReach; j <= c.J+graphReach; j++ {
+			start, end := x.Row(j, k, c.I-graphReach, c.I+graphReach)
+			for n := start; n < end; n++ {
+				if n != i {
+					f(n)
+				}
+			}
+		}
+	}
+}
+
+// propagate spreads the side of the seeds, which are known, to every fitted
+// voxel connected to them, along the steps between most nearly parallel normals
+// first, turning planes on the way. It returns the seeds and all it reached.
+func propagate(x *terrain.Index, planes *LocalPlanes, known []bool, seeds []int32) []int32 {
+	var steps stepHeap
+	push := func(from int) {
+		neighbours(x, from, func(to int) {
+			if !known[to] && planes.Fitted(to) {
+				c := math.Abs(r3.Dot(planes.Normal[from], planes.Normal[to]))
+				heap.Push(&steps, step{c, int32(from), int32(to)})
+			}
+		})
+	}
+	reached := append([]int32(nil), seeds...)
+	for _, s := range seeds {
+		push(int(s))
+	}
+	for len(steps) > 0 {
+		s := heap.Pop(&steps).(step)
+		if known[s.to] {
+			continue
+		}
+		known[s.to] = true
+		if r3.Dot(planes.Normal[s.from], planes.Normal[s.to]) < 0 {
+			flip(planes, int(s.to))
+		}
+		reached = append(reached, s.to)
+		push(int(s.to))
+	}
+	return reached
+}
+
+// A step leads from a voxel whose side is known to a neighbour; cosine is that
+// of the angle between their normals, as lines.
+type step struct {
+	cosine   float64
+	from, to int32
+}
+
+// stepHeap is a max-heap on cosine; ties go to the lower voxel, so that the
+// result is unique.
+type stepHeap []step
+
+func (h stepHeap) Len() int { return len(h) }
+func (h stepHeap) Less(a, b int) bool {
+	switch {
+	case h[a].cosine != h[b].cosine:
+		return h[a].cosine > h[b].cosine
+	case h[a].to != h[b].to:
+		return h[a].to < h[b].to
+	}
+	return h[a].from < h[b].from
+}
+func (h stepHeap) Swap(a, b int) { h[a], h[b] = h[b], h[a] }
+func (h *stepHeap) Push(x any)   { *h = append(*h, x.(step)) }
+func (h *stepHeap) Pop() any {
+	old := *h
+	s := old[len(old)-1]
+	*h = old[:len(old)-1]
+	return s
+}
