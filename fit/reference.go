@@ -1,0 +1,224 @@
+package fit
+
+import (
+	"context"
+	"math"
+	"slices"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"ledgework/terrain"
+)
+
+// Relief is how far each voxel of a survey stands out of its reference face.
+type Relief struct {
+	// Height is the signed distance of the voxel's mean from the face, outward
+	// positive, in metres; NaN where no face was found within the radius.
+	Height []float64
+	// Normal is the face's outward unit normal there, the zero vector where
+	// there is no face.
+	Normal []r3.Vec
+}
+
+// A ReliefInput is what FindRelief works from: three views of one survey.
+type ReliefInput struct {
+	At *terrain.Voxels // where relief is wanted
+
+	Members *terrain.Index // coarser voxels that faces are fitted to
+	Planes  *LocalPlanes   // at Members, outward
+
+	Centres *terrain.Voxels // still coarser: faces are found around each of their means
+	Centre  []int32         // for each voxel of At, its voxel in Centres
+
+	RadiusM float64 // R: how far around a voxel its face is looked for
+	ProudM  float64 // smallest relief that matters, for the robust fits' scale
+}
+
+// FindRelief finds the reference faces around each centre and measures the
+// voxels of At against them.
+//
+// A plain plane through everything within R would call every corner of a slope
+// a bulge. So the neighbourhood is split into faces first: planes with enough
+// members that agree in position and direction, each refined by a robust fit
+// (Tukey biweight) and a quadratic term, so that a gently curved wall is no
+// bulge either. Where two faces meet, relief is the distance from the solid
+// that they bound: the larger of the two distances at an outer corner or crest,
+// the smaller at an inner corner or foot; on the step between two parallel
+// faces it is zero.
+func FindRelief(ctx context.Context, in *ReliefInput, workers int) (*Relief, error) {
+	n := in.At.Len()
+	out := &Relief{Height: make([]float64, n), Normal: make([]r3.Vec, n)}
+	children, starts := groupBy(in.Centre, in.Centres.Len())
+	err := inParallel(ctx, in.Centres.Len(), workers, func() func(int) error {
+		w := &reliefWorker{in: in, out: out}
+		return func(i int) error {
+			w.around(i, children[starts[i]:starts[i+1]])
+			return nil
+		}
+	})
+	if err != nil {
+		return nil, err
+	}
+	return out, nil
+}
+
+// groupBy returns the indices of group sorted by their group, and where each of
+// the n groups starts in them.
+func groupBy(group []int32, n int) (members []int32, starts []int32) {
+	starts = make([]int32, n+1)
+	for _, g := range group {
+		starts[g+1]++
+	}
+	for i := range n {
+		starts[i+1] += starts[i]
+	}
+	members = make([]int32, len(group))
+	next := slices.Clone(starts[:n])
+	for i, g := range group {
+		members[next[g]] = int32(i)
+		next[g]++
+	}
+	return members, starts
+}
+
+type reliefWorker struct {
+	in     *ReliefInput
+	out    *Relief
+	near   []int32
+	hood   neighbourhood
+	faces  []face
+	chosen []chosenFace
+}
+
+// A chosenFace bounds the solid near a centre, in relation to the first.
+type chosenFace struct {
+	*face
+	meets meeting
+}
+
+// meeting is how a face meets the primary one.
+type meeting uint8
+
+const (
+	outer  meeting = iota // corner or crest: the solid is what lies behind both
+	inner                 // inner corner or foot: the solid is what lies behind either
+	offset                // the surface runs from one to the other
+)
+
+func (w *reliefWorker) around(centre int, voxels []int32) {
+	c := w.in.Centres.Mean(centre)
+	w.gather(c)
+	w.faces = w.hood.findFaces(w.faces, w.in.RadiusM, w.in.ProudM)
+	w.choose()
+	for _, v := range voxels {
+		if len(w.chosen) == 0 {
+			w.out.Height[v] = math.NaN()
+			continue
+		}
+		w.out.Height[v], w.out.Normal[v] = w.relief(r3.Sub(w.in.At.Mean(int(v)), c))
+	}
+}
+
+func (w *reliefWorker) gather(c r3.Vec) {
+	w.near = w.in.Members.Within(w.near[:0], c, w.in.RadiusM)
+	h := &w.hood
+	h.pos, h.normal, h.area = h.pos[:0], h.normal[:0], h.area[:0]
+	g := w.in.Members.Voxels().Lattice.SpacingM()
+	for _, i := range w.near {
+		n := w.in.Planes.Normal[i]
+		h.pos = append(h.pos, r3.Sub(w.in.Members.Mean(int(i)), c))
+		h.normal = append(h.normal, n)
+		h.area = append(h.area, CellArea(g, n))
+	}
+	h.face = slices.Grow(h.face[:0], len(h.pos))[:len(h.pos)]
+}
+
+// CellArea is the surface area in m² that one occupied voxel of edge g stands
+// for, on a surface with unit normal n: g²/(|nx|+|ny|+|nz|). A plane crosses
+// (|nx|+|ny|+|nz|)/g² cells per unit of its area on average, one for each face
+// it passes (Cauchy's projection formula). For the zero vector, which has no
+// direction, it is the average over all directions, 2g²/3.
+func CellArea(g float64, n r3.Vec) float64 {
+	s := math.Abs(n.X) + math.Abs(n.Y) + math.Abs(n.Z)
+	if s == 0 {
+		s = 1.5 // mean of |nx|+|ny|+|nz| over the sphere
+	}
+	return g * g / s
+}
+
+// choose picks the faces that bound the solid near the centre: the one with the
+// nearest member, and those that come about as near.
+func (w *reliefWorker) choose() {
+	w.chosen = w.chosen[:0]
+	primary := -1
+	for i := range w.faces {
+		if f := &w.faces[i]; f.area > 0 && (primary < 0 || f.nearest < w.faces[primary].nearest) {
+			primary = i
+		}
+	}
+	if primary < 0 {
+		return
+	}
+	p := &w.faces[primary]
+	w.chosen = append(w.chosen, chosenFace{face: p})
+	// A voxel lies within a centre's cell, up to 0.87 edges from its mean.
+	reach := p.nearest + 1.25*w.in.Centres.Lattice.SpacingM()
+	for i := range w.faces {
+		f := &w.faces[i]
+		if i == primary || f.area == 0 || f.nearest > reach {
+			continue
+		}
+		w.chosen = append(w.chosen, chosenFace{f, w.meeting(primary, i)})
+	}
+	slices.SortStableFunc(w.chosen[1:], func(a, b chosenFace) int {
+		switch {
+		case a.nearest < b.nearest:
+			return -1
+		case a.nearest > b.nearest:
+			return 1
+		}
+		return 0
+	})
+}
+
+// meeting tells from which side of each other the members of two faces lie.
+func (w *reliefWorker) meeting(a, b int) meeting {
+	ofB := w.hood.meanSigned(w.faces[a].plane, int8(b))
+	ofA := w.hood.meanSigned(w.faces[b].plane, int8(a))
+	switch {
+	case ofA < 0 && ofB < 0:
+		return outer
+	case ofA > 0 && ofB > 0:
+		return inner
+	}
+	return offset
+}
+
+// relief measures x, relative to the centre, against the chosen faces.
+func (w *reliefWorker) relief(x r3.Vec) (float64, r3.Vec) {
+	d, n := w.chosen[0].surface.at(x)
+	for i := 1; i < len(w.chosen); i++ {
+		e, m := w.chosen[i].surface.at(x)
+		switch w.chosen[i].meets {
+		case outer:
+			if e > d {
+				d, n = e, m
+			}
+		case inner:
+			if e < d {
+				d, n = e, m
+			}
+		case offset:
+			switch {
+			case d*e <= 0:
+				if math.Abs(e) < math.Abs(d) {
+					n = m
+				}
+				d = 0
+			case math.Abs(e) < math.Abs(d):
+				d, n = e, m
+			}
+		}
+	}
+	return d, n
+}
