@@ -29,3 +29,8 @@ const (
 	// an azimuth: one quantum of height, 0.1 mm, over a kilometre.
 	minTiltRad = 1e-7
 )
+
+// flatSize is the least half extent of a point set, relative to the larger of
+// its size and its coordinates, that is not made by rounding: each of the
+// steps that turn coordinates into the set's own frame adds an epsilon or two.
+const flatSize = 16 * epsilon
