@@ -7,6 +7,7 @@ import (
 	"sync/atomic"
 
 	"ledgework/terrain"
+	"ledgework/terrain/gdal"
 )
 
 // Options choose how a file is read. The zero value refuses damaged files.
@@ -69,7 +70,7 @@ func NewReader(r io.ReaderAt, size int64, opts Options) (*Reader, error) {
 		return nil, &terrain.UnsupportedError{Format: formatName, Feature: lazFeature, Remedy: lazRemedy}
 	}
 	t := &Reader{r: r, raw: raw, header: raw.header(size), opts: opts}
-	recs.crs(raw, t.header, nil)
+	recs.crs(raw, t.header, gdal.FromGeoTIFFKeys)
 	t.header.Notes = append(t.header.Notes, recs.notes...)
 	t.held = max(0, pointsEnd-int64(raw.dataOffset)) / int64(raw.recordLength)
 	t.end = t.header.Points

@@ -192,7 +192,7 @@ func (t *records) crs(h *rawHeader, to *terrain.Header, fromKeys func(dir []uint
 	if len(t.keys.dir) > 0 {
 		if !t.keys.valid() {
 			t.note("the GeoTIFF keys are damaged")
-		} else if t.keys.dir[3] > 0 && fromKeys != nil {
+		} else if t.keys.dir[3] > 0 {
 			wkt, err := fromKeys(t.keys.dir, t.keys.doubles, t.keys.ascii)
 			if err == nil && wkt != "" {
 				to.CRS = wkt

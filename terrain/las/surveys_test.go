@@ -131,13 +131,13 @@ func TestKnownSurveys(t *testing.T) {
 		class     uint8
 		inClass   int
 		points    int
-		date      string
+		date, crs string
 	}{
-		{"terrain/Haystack_Rock.las", [3]float64{2e6, 2e5, 0}, [3]int64{506545875571, 114569712423, 68585619}, 0, 0, 21932, 21932, "2011-11-29"},
-		{"seasons/bmx/2010.las", [3]float64{194000, 259000, 0}, [3]int64{40503771, 20108640, 35440702}, 15946240, 2, 829, 829, "2025-12-05"},
-		{"broken/pdal/spurious.las", [3]float64{}, [3]int64{-1310691991447, 469200222105, 14091334}, 81361, 2, 276, 1065, "2014-01-27"},
-		{"formats/permutations/1.0_1.las", [3]float64{}, [3]int64{47069244, 460288890, 1600}, 0, 2, 1, 1, "2008-03-18"},
-		{"other/ripple/ripple.las", [3]float64{-5, -5, -0.6664100289344788}, [3]int64{5100500000000, 5100500000000, 2713111521870}, 0, 0, 10201, 10201, "2015-03-15"},
+		{"terrain/Haystack_Rock.las", [3]float64{2e6, 2e5, 0}, [3]int64{506545875571, 114569712423, 68585619}, 0, 0, 21932, 21932, "2011-11-29", "NAD83(NSRS2007) / Oregon North"},
+		{"seasons/bmx/2010.las", [3]float64{194000, 259000, 0}, [3]int64{40503771, 20108640, 35440702}, 15946240, 2, 829, 829, "2025-12-05", "NAD83 / Oregon LCC (m)"},
+		{"broken/pdal/spurious.las", [3]float64{}, [3]int64{-1310691991447, 469200222105, 14091334}, 81361, 2, 276, 1065, "2014-01-27", "WGS 84"},
+		{"formats/permutations/1.0_1.las", [3]float64{}, [3]int64{47069244, 460288890, 1600}, 0, 2, 1, 1, "2008-03-18", ""},
+		{"other/ripple/ripple.las", [3]float64{-5, -5, -0.6664100289344788}, [3]int64{5100500000000, 5100500000000, 2713111521870}, 0, 0, 10201, 10201, "2015-03-15", ""},
 	} {
 		r, err := openFile(t, filepath.Join(root, c.file), Options{})
 		if err != nil {
@@ -164,6 +164,9 @@ func TestKnownSurveys(t *testing.T) {
 		}
 		if d := r.Header().Date; d != c.date {
 			t.Errorf("%s: got date %s, want %s", c.file, d, c.date)
+		}
+		if crs := r.Header().CRS; !strings.Contains(crs, c.crs) {
+			t.Errorf("%s: got CRS %s, want %s", c.file, crs, c.crs)
 		}
 	}
 }
