@@ -47,23 +47,25 @@ func (s *solver) solve(gap float64) int {
 	goal := 3 * math.Pow(1+gap, 2./3)
 	for step := 0; ; step++ {
 		far, near := s.extremes()
-		if step%refreshSteps == refreshSteps-1 {
-			s.drop(far.form)
+		if far.form <= goal || step%refreshSteps == refreshSteps-1 {
 			s.refresh()
+			far, near = s.extremes()
 		}
-		if far.form <= goal || step == maxEncloseSteps {
+		switch {
+		case step == maxEncloseSteps:
+			return step
+		case far.form <= goal:
 			// Dropped points touch no optimal ellipsoid, but one that is only
 			// nearly optimal may leave one out.
-			s.refresh()
-			if s.active == len(s.points) || step == maxEncloseSteps || s.furthest(len(s.points)) <= goal {
+			if s.furthest(len(s.points)) <= goal {
 				return step
 			}
 			s.active = len(s.points)
-			continue
-		}
-		if far.form-3 >= 3-near.form {
+		case step%refreshSteps == refreshSteps-1:
+			s.drop(far.form) // moves points, so that far and near are void
+		case far.form-3 >= 3-near.form:
 			s.step(far.index, s.length(far))
-		} else {
+		default:
 			s.step(near.index, max(s.length(near), -s.weights[near.index]))
 		}
 	}
