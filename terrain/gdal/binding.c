@@ -82,6 +82,9 @@ static void start(void) {
 	CPLPushErrorHandler(CPLQuietErrorHandler);
 	CPLSetConfigOption("GDAL_VRT_ENABLE_PYTHON", "NO");
 	OSRSetPROJEnableNetwork(0);
+	// Blocks are read once and in order; by default the cache would keep a
+	// twentieth of the machine's memory of them.
+	if (!CPLGetConfigOption("GDAL_CACHEMAX", NULL)) GDALSetCacheMax64(64 << 20);
 	GDALAllRegister();
 	for (int i = 0; services[i]; i++) {
 		GDALDriverH driver = GDALGetDriverByName(services[i]);

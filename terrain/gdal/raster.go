@@ -12,6 +12,7 @@ import "C"
 import (
 	"fmt"
 	"math"
+	"strings"
 	"unsafe"
 )
 
@@ -93,6 +94,13 @@ func (b *Band) Description() string { return b.text }
 // Alpha reports whether the band is a transparency mask and not data.
 func (b *Band) Alpha() bool { return b.alpha }
 
+// AllValid reports whether every cell holds data as far as the file says: it has
+// no nodata value, mask or alpha band. NaN may still occur.
+func (b *Band) AllValid() bool { return b.mask&maskAllValid != 0 }
+
+// maskAllValid is GDAL's mask flag GMF_ALL_VALID.
+const maskAllValid = 1
+
 // Metadata returns an item of the band's default metadata domain, and whether
 // it is there.
 func (b *Band) Metadata(key string) (string, bool) { return b.d.metadata(b.number, key) }
@@ -147,4 +155,12 @@ func (b *Band) read(x, y, w, h int, dst []float64, valid []uint8) error {
 	}
 	takeLog(&log)
 	return nil
+}
+
+// Complex reports whether the band stores complex numbers.
+func (b *Band) Complex() bool { return strings.HasPrefix(b.dtype, "C") }
+
+// Integer reports whether the band stores whole numbers, which are never NaN.
+func (b *Band) Integer() bool {
+	return strings.HasPrefix(b.dtype, "Int") || strings.HasPrefix(b.dtype, "UInt") || b.dtype == "Byte"
 }
