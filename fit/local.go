@@ -13,9 +13,9 @@ import (
 )
 
 // LocalPlanes are the local planes of one radius at every voxel of a survey,
-// column by column. A voxel without a plane (fewer than three points around
-// it, or all on a line) has a zero Normal and zeros in every other column but
-// Points and Voxels.
+// column by column. A voxel without a plane (fewer than minPlaneVoxels around
+// it, or nearly all on a line) has a zero Normal and zeros in every other column
+// but Points and Voxels.
 type LocalPlanes struct {
 	RadiusM   float64
 	Normal    []r3.Vec  // unit; outward after Orient, before that of either sign
@@ -58,6 +58,13 @@ func FitLocal(ctx context.Context, at *terrain.Voxels, members *terrain.Index, r
 	}
 	return out, nil
 }
+
+// What a local plane needs. Three points always have a plane, and points along
+// one scan line any: neither says anything of the surface.
+const (
+	minPlaneVoxels = 5
+	minStripRatio  = 0.02 // of the variances across and along: a strip seven times as long as wide
+)
 
 // tileRadii is a tile's edge in neighbourhood radii. The halo makes a tile
 // gather (1+2/tileRadii)² times the members of its own area; larger tiles fall
@@ -278,14 +285,15 @@ func slabGap(lo, g float64) float64 {
 func (w *localWorker) finish(q int, p, centre r3.Vec, sum *terrain.Moments, count int32) {
 	o := w.out
 	o.Points[q], o.Voxels[q] = sum.N, count
-	plane, ok := PlaneFromMoments(sum, r3.Vec{}, int(count))
-	if !ok {
+	if count < minPlaneVoxels {
 		return
 	}
-	rms, ok := plane.Roughness()
-	if !ok {
-		rms = 0
+	plane, ok := PlaneFromMoments(sum, r3.Vec{}, int(count))
+	if !ok || plane.Lambda[1] < minStripRatio*plane.Lambda[2] {
+		return
 	}
+	// Five voxels hold five points at least.
+	rms, _ := plane.Roughness()
 	o.Normal[q] = plane.Normal
 	o.Offset[q] = r3.Dot(r3.Sub(p, plane.Centroid), plane.Normal)
 	o.Roughness[q] = float32(rms)

@@ -22,49 +22,84 @@ const (
 	freeSpaceStart  = 2    // cells passed over next to the surface itself
 	freeSpaceWeight = 0.5  // of one voxel's free space against one voxel facing straight up
 	graphReach      = 2    // cells: neighbours of the propagation graph, with gaps of one cell
+
+	// A piece is what steps of up to 60° connect: a step any sharper may lead
+	// over the few stray points of a scan line, whose plane is anything.
+	pieceCosine = 0.5
+	// A piece decides for itself with a mean vote of 0.3, which ground
+	// inclined up to 72° gives by facing up; a steeper one rather follows the
+	// pieces it touches.
+	decidedVote = 0.3
 )
 
 // OrientCoarse turns the normals of planes, fitted at the voxels of x, to the
-// air side: propagated over the neighbour graph from most to least certain
-// (Hoppe et al. 1992, SIGGRAPH 26:71–78) and then, for each connected piece as
-// a whole, decided by the sum of the evidence at all its voxels. Sensors are
-// scanner positions in the working CRS and may be nil.
+// air side. Within smoothly connected pieces the side is propagated over the
+// neighbour graph, nearest orientation first (Hoppe et al. 1992, SIGGRAPH
+// 26:71–78); each piece as a whole is decided by the evidence at all its voxels;
+// and pieces with little evidence, sheer walls for instance, take their side
+// from decided ones by the same propagation across the edges between. Sensors
+// are scanner positions in the working CRS and may be nil.
 //
-// It returns the share of the surface that lies in pieces whose evidence is
-// weak, which are then a guess.
-func OrientCoarse(ctx context.Context, x *terrain.Index, planes *LocalPlanes, sensors []r3.Vec) (weakShare float64, err error) {
-	n := x.Voxels().Len()
-	known := make([]bool, n)
-	var fitted, weak int
-	for start := range n {
-		if known[start] || !planes.Fitted(start) {
+// It returns the share of the surface that lies in pieces with little evidence
+// that touch no decided one: their side is a guess.
+func OrientCoarse(ctx context.Context, x *terrain.Index, planes *LocalPlanes, sensors []r3.Vec) (guessedShare float64, err error) {
+	known := make([]bool, x.Voxels().Len())
+	pieces, err := settle(ctx, x, planes, known, sensors)
+	if err != nil {
+		return 0, err
+	}
+	clear(known)
+	var fitted int
+	var decided []int32
+	for _, p := range pieces {
+		fitted += len(p.voxels)
+		if p.vote < decidedVote {
 			continue
 		}
-		if err := ctx.Err(); err != nil {
-			return 0, err
+		for _, i := range p.voxels {
+			known[i] = true
 		}
-		known[start] = true
-		piece := propagate(x, planes, known, []int32{int32(start)})
-		var votes float64
-		for _, i := range piece {
-			votes += evidence(x, planes.Normal[i], int(i), sensors)
-		}
-		if votes < 0 {
-			for _, i := range piece {
-				flip(planes, int(i))
-			}
-		}
-		fitted += len(piece)
-		// A tenth of a voxel's full vote, on average, is what a wall leaning
-		// back by 6° gives by facing up.
-		if math.Abs(votes) < 0.1*float64(len(piece)) {
-			weak += len(piece)
-		}
+		decided = append(decided, p.voxels...)
 	}
 	if fitted == 0 {
 		return 0, nil
 	}
-	return float64(weak) / float64(fitted), nil
+	reached := propagate(x, planes, known, decided, 0)
+	return 1 - float64(len(reached))/float64(fitted), ctx.Err()
+}
+
+// A piece is a smoothly connected set of voxels, turned to the side that its
+// evidence speaks for, with the mean vote for that side.
+type piece struct {
+	voxels []int32
+	vote   float64
+}
+
+// settle splits the fitted voxels that are not known into pieces, turns each to
+// the side that its evidence speaks for and marks it known.
+func settle(ctx context.Context, x *terrain.Index, planes *LocalPlanes, known []bool, sensors []r3.Vec) ([]piece, error) {
+	var pieces []piece
+	for start := range known {
+		if known[start] || !planes.Fitted(start) {
+			continue
+		}
+		if err := ctx.Err(); err != nil {
+			return nil, err
+		}
+		known[start] = true
+		voxels := propagate(x, planes, known, []int32{int32(start)}, pieceCosine)
+		var votes float64
+		for _, i := range voxels {
+			votes += evidence(x, planes.Normal[i], int(i), sensors)
+		}
+		if votes < 0 {
+			for _, i := range voxels {
+				flip(planes, int(i))
+			}
+		}
+		pieces = append(pieces, piece{voxels, math.Abs(votes) / float64(len(voxels))})
+	}
+	return pieces, nil
 }
 
 func flip(p *LocalPlanes, i int) {
@@ -113,8 +148,9 @@ func blocked(x *terrain.Index, p, n r3.Vec) bool {
 // of a coarser level: parent gives each voxel's voxel there. A normal within
 // 70° of the parent's, either way round, takes its side; the others, on the
 // underside of a block for instance, take it from their neighbours, nearest
-// orientation first.
-func OrientFrom(ctx context.Context, x *terrain.Index, planes, coarse *LocalPlanes, parent []int32) error {
+// orientation first. Pieces without any such neighbour, where points are too
+// few for a coarse plane, decide for themselves as in OrientCoarse.
+func OrientFrom(ctx context.Context, x *terrain.Index, planes, coarse *LocalPlanes, parent []int32, sensors []r3.Vec) error {
 	n := x.Voxels().Len()
 	known := make([]bool, n)
 	var sure []int32
@@ -136,8 +172,9 @@ func OrientFrom(ctx context.Context, x *terrain.Index, planes, coarse *LocalPlan
 	if err := ctx.Err(); err != nil {
 		return err
 	}
-	propagate(x, planes, known, sure)
-	return ctx.Err()
+	propagate(x, planes, known, sure, 0)
+	_, err := settle(ctx, x, planes, known, sensors)
+	return err
 }
 
 // hasUnknown reports whether voxel i has a fitted neighbour that is not known.
@@ -164,14 +201,16 @@ func neighbours(x *terrain.Index, i int, f func(j int)) {
 
 // propagate spreads the side of the seeds, which are known, to every fitted
 // voxel connected to them, along the steps between most nearly parallel normals
-// first, turning planes on the way. It returns the seeds and all it reached.
-func propagate(x *terrain.Index, planes *LocalPlanes, known []bool, seeds []int32) []int32 {
+// first and none with a cosine below least, turning planes on the way. It
+// returns the seeds and all it reached.
+func propagate(x *terrain.Index, planes *LocalPlanes, known []bool, seeds []int32, least float64) []int32 {
 	var steps stepHeap
 	push := func(from int) {
 		neighbours(x, from, func(to int) {
 			if !known[to] && planes.Fitted(to) {
-				c := math.Abs(r3.Dot(planes.Normal[from], planes.Normal[to]))
-				heap.Push(&steps, step{c, int32(from), int32(to)})
+				if c := math.Abs(r3.Dot(planes.Normal[from], planes.Normal[to])); c >= least {
+					heap.Push(&steps, step{c, int32(from), int32(to)})
+				}
 			}
 		})
 	}
