@@ -1,6 +1,7 @@
 package grid
 
 import (
+	"encoding/binary"
 	"errors"
 	"fmt"
 	"io"
@@ -197,7 +198,7 @@ func TestOpenRefuses(t *testing.T) {
 		{"band negative", vrtFile(t, northUp, "", "", ""), Options{Band: -1}, "counted from 1"},
 		{"control points", vrtFile(t, `<GCPList><GCP Id="1" Pixel="0" Line="0" X="1" Y="1"/><GCP Id="2" Pixel="3" Line="0" X="7" Y="1"/><GCP Id="3" Pixel="0" Line="2" X="1" Y="9"/></GCPList>`, "", "", ""), Options{}, "3 ground control points but no geotransform"},
 		{"complex", write(t, "c.vrt", `<VRTDataset rasterXSize="1" rasterYSize="1">`+northUp+`<VRTRasterBand dataType="CFloat32" band="1"/></VRTDataset>`), Options{}, "complex numbers (CFloat32) is not supported"},
-		{"one huge block", write(t, "h.vrt", `<VRTDataset rasterXSize="30000" rasterYSize="30000">`+northUp+`<VRTRasterBand dataType="Float64" band="1" blockXSize="30000" blockYSize="30000"/></VRTDataset>`), Options{}, "blocks of 30000 × 30000 cells"},
+		{"one huge block", write(t, "h.tif", hugeTile()), Options{}, "blocks of 30000 × 30000 cells"},
 	}
 	for _, tt := range tests {
 		t.Run(tt.name, func(t *testing.T) {
@@ -211,6 +212,29 @@ func TestOpenRefuses(t *testing.T) {
 			}
 		})
 	}
+}
+
+// hugeTile is a GeoTIFF without data whose only tile is 30000 × 30000 cells of
+// eight bytes.
+func hugeTile() string {
+	le := binary.LittleEndian
+	const side, ifd, entries = 30000, 8, 13
+	out := append([]byte("II*\x00"), ifd, 0, 0, 0, entries, 0)
+	at := uint32(ifd + 2 + entries*12 + 4)
+	for _, e := range [entries][4]uint32{ // tag, type, count, value
+		{256, 4, 1, side}, {257, 4, 1, side}, {258, 3, 1, 64}, {259, 3, 1, 8}, {262, 3, 1, 1}, {277, 3, 1, 1},
+		{322, 4, 1, side}, {323, 4, 1, side}, {324, 4, 1, 0}, {325, 4, 1, 0}, {339, 3, 1, 3}, {33550, 12, 3, at}, {33922, 12, 6, at + 24},
+	} {
+		out = le.AppendUint16(out, uint16(e[0]))
+		out = le.AppendUint16(out, uint16(e[1]))
+		out = le.AppendUint32(out, e[2])
+		out = le.AppendUint32(out, e[3])
+	}
+	out = le.AppendUint32(out, 0)
+	for _, v := range []float64{1, 1, 0, 0, 0, 0, 100, 200, 0} { // ModelPixelScale, ModelTiepoint
+		out = le.AppendUint64(out, math.Float64bits(v))
+	}
+	return string(out)
 }
 
 func TestTruncatedGrid(t *testing.T) {
@@ -239,8 +263,8 @@ func TestUndeclaredNoData(t *testing.T) {
 	}
 }
 
-// Infinite rasters are cheap to promise: a VRT without sources is all zero, or
-// all nodata. Reading must stay lazy.
+// A raster of any size is cheap to promise: a VRT without sources is nodata
+// throughout. Reading must stay lazy.
 func TestHugePromise(t *testing.T) {
 	path := write(t, "huge.vrt", `<VRTDataset rasterXSize="2000000000" rasterYSize="2000000000">`+northUp+
 		`<VRTRasterBand dataType="Float32" band="1"><NoDataValue>0</NoDataValue></VRTRasterBand></VRTDataset>`)
