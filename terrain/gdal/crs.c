@@ -64,14 +64,22 @@ static char *authority_of(OGRSpatialReferenceH srs, int compound) {
 		}
 		return NULL;
 	}
-	// Old WKT often names a UTM zone or WGS 84 without its code.
-	OGRSpatialReferenceH guess = OSRClone(srs);
+	// Old WKT and PROJ strings come without a code. At 70 PROJ has found one that
+	// is equivalent in all but its name.
+	const char *const same[] = {"CRITERION=EQUIVALENT_EXCEPT_AXIS_ORDER_GEOGCRS", NULL};
+	int n = 0, *confidence = NULL;
 	char *found = NULL;
-	if (OSRAutoIdentifyEPSG(guess) == OGRERR_NONE && (code = OSRGetAuthorityCode(guess, NULL))) {
-		snprintf(text, sizeof text, "EPSG:%s", code);
-		found = CPLStrdup(text);
+	OGRSpatialReferenceH *matches = OSRIsLocal(srs) ? NULL : OSRFindMatches(srs, NULL, &n, &confidence);
+	if (matches && n > 0 && confidence[0] >= 70 && OSRIsSameEx(srs, matches[0], same)) {
+		name = OSRGetAuthorityName(matches[0], NULL);
+		code = OSRGetAuthorityCode(matches[0], NULL);
+		if (name && code) {
+			snprintf(text, sizeof text, "%s:%s", name, code);
+			found = CPLStrdup(text);
+		}
 	}
-	OSRDestroySpatialReference(guess);
+	OSRFreeSRSArray(matches);
+	CPLFree(confidence);
 	return found;
 }
 
