@@ -23,7 +23,7 @@ const (
 const idDigits = 10
 
 // ID names the thing of the given kind at cell c of the lattice, as in
-// "pa-mzxw6ytboi". It depends on nothing else, so it is the same in every run
+// "pa-4vvlnwj5hh". It depends on nothing else, so it is the same in every run
 // on the same lattice.
 func ID(prefix string, l terrain.Lattice, c terrain.Cell) string {
 	return idOf(prefix, l, c, 0)

@@ -221,45 +221,49 @@ func frame(n r3.Vec) (u, w r3.Vec) {
 // disc appends the voxels whose means lie in the slab of the footprint at c
 // with normal n, out to the coverage grid's reach.
 //
-// It walks the rows of cells that meet the box around that cylinder and solves,
-// for each, which stretch of the row the cylinder can hold.
+// It walks the rows of cells that meet the box around that cylinder and looks,
+// in each, only at the stretch that the cylinder can hold.
 func (j *judge) disc(dst []member, c, n r3.Vec) []member {
 	u, w := frame(n)
 	l := j.voxels.Lattice
-	g := l.SpacingM()
-	reach2 := j.grid.reach * j.grid.reach
-	// A mean lies within half a cell of its row's axis in both directions.
-	rowReach := j.grid.reach + g*math.Sqrt2/2
-	rowSlab := g / 2 * (math.Abs(n.Y) + math.Abs(n.Z))
-	a := 1 - n.X*n.X
-
+	g, depth, radius, reach := l.SpacingM(), j.depth, j.radius, j.grid.reach
+	reach2 := reach * reach
+	row := newRowSolver(n, -depth, radius, reach, g)
 	box := func(n float64) (lo, hi float64) {
-		side := j.grid.reach * math.Sqrt(max(0, 1-n*n))
-		return min(-j.depth*n, j.radius*n) - side, max(-j.depth*n, j.radius*n) + side
+		side := reach * math.Sqrt(max(0, 1-n*n))
+		return min(-depth*n, radius*n) - side, max(-depth*n, radius*n) + side
 	}
 	xlo, xhi := box(n.X)
 	ylo, yhi := box(n.Y)
 	zlo, zhi := box(n.Z)
 	low := l.CellOf(r3.Vec{X: c.X + xlo, Y: c.Y + ylo, Z: c.Z + zlo})
 	high := l.CellOf(r3.Vec{X: c.X + xhi, Y: c.Y + yhi, Z: c.Z + zhi})
+	// Cells from low.I on, so that a conversion to integer rounds down.
+	origin, perCell := c.X-float64(low.I)*g, 1/g
+	width := float64(high.I - low.I)
 	for k := low.K; k <= high.K; k++ {
 		z := (float64(k)+0.5)*g - c.Z
 		for jj := low.J; jj <= high.J; jj++ {
 			y := (float64(jj)+0.5)*g - c.Y
-			s := n.Y*y + n.Z*z
-			lo, hi := slabStretch(n.X, s, -j.depth-rowSlab, j.radius+rowSlab, xlo, xhi)
-			lo, hi = discStretch(a, n.X*s, y*y+z*z-s*s-rowReach*rowReach, lo, hi)
-			if lo > hi {
+			lo, hi, ok := row.stretch(y, z)
+			if !ok {
 				continue
 			}
-			first := max(low.I, int32(math.Floor((c.X+lo)/g-cellSlack)))
-			last := min(high.I, int32(math.Floor((c.X+hi)/g+cellSlack)))
-			start, end := j.index.Row(jj, k, first, last)
+			lo = (origin+lo)*perCell - cellSlack
+			hi = (origin+hi)*perCell + cellSlack
+			if hi < 0 || lo > width+1 {
+				continue
+			}
+			start, end := j.index.Row(jj, k, low.I+int32(max(lo, 0)), low.I+int32(min(hi, width)))
 			for v := start; v < end; v++ {
 				d := r3.Sub(j.index.Mean(v), c)
-				m := member{int32(v), r3.Dot(u, d), r3.Dot(w, d), r3.Dot(n, d)}
-				if m.height >= -j.depth && m.height <= j.radius && m.a*m.a+m.b*m.b <= reach2 {
-					dst = append(dst, m)
+				h := r3.Dot(n, d)
+				if h < -depth || h > radius {
+					continue
+				}
+				a, b := r3.Dot(u, d), r3.Dot(w, d)
+				if a*a+b*b <= reach2 {
+					dst = append(dst, member{int32(v), a, b, h})
 				}
 			}
 		}
@@ -268,41 +272,83 @@ func (j *judge) disc(dst []member, c, n r3.Vec) []member {
 }
 
 // cellSlack, in cells, is far more than the rounding of a coordinate divided by
-// the spacing: 1e9 cells, as many as an index can count, have a last bit of
-// 1e-7 cells. It can only widen the search.
+// the spacing: 1e9 cells, about as many as an index can count, have a last bit
+// of 1e-7 cells. It can only widen the search.
 const cellSlack = 1e-3
 
-// slabStretch narrows [lo, hi] to the x with low ≤ n·x + s ≤ high.
-func slabStretch(n, s, low, high, lo, hi float64) (float64, float64) {
-	switch {
-	case n > 0:
-		return max(lo, (low-s)/n), min(hi, (high-s)/n)
-	case n < 0:
-		return max(lo, (high-s)/n), min(hi, (low-s)/n)
-	case s < low || s > high:
-		return 1, 0
-	}
-	return lo, hi
+// A rowSolver intersects rows of cells, which run along x, with a cylinder
+// about the origin: within reach of an axis along the unit normal n, and from
+// low to high along it. The cylinder is grown by what a mean can be off its
+// row's axis, so no member is missed.
+type rowSolver struct {
+	n            r3.Vec
+	a, perA      float64 // 1 − nx² and its inverse, 0 where n lies along the row
+	reach2       float64
+	low, high    float64 // of the slab, grown
+	perX         float64 // 1/nx, 0 where the row lies in the plane
+	first, final float64 // low/nx and high/nx in order
 }
 
-// discStretch narrows [lo, hi] to the x with a·x² − 2·b·x + q ≤ 0, a ≥ 0.
-func discStretch(a, b, q, lo, hi float64) (float64, float64) {
-	// Along the normal, or nearly: the parabola is flat over any stretch and
-	// only widens the cylinder, so leaving it out is safe.
-	if a < minSlant {
-		return lo, hi
+// A row is cut only by what it meets at an angle: |nx| and 1 − nx² at least
+// these. Below, dividing would bring in little but rounding, and what is left
+// out hardly narrows the stretch: to neglect a 1 − nx² of 1e-9 moves the distance
+// from the axis by less than the growth of the cylinder for any radius below
+// 10 000 spacings.
+const (
+	minSlant = 1e-6
+	minSkew  = 1e-9
+)
+
+func newRowSolver(n r3.Vec, low, high, reach, spacing float64) rowSolver {
+	half := spacing / 2
+	off := half * (math.Abs(n.Y) + math.Abs(n.Z))
+	reach += half * math.Sqrt2
+	s := rowSolver{n: n, a: 1 - n.X*n.X, reach2: reach * reach, low: low - off, high: high + off}
+	if s.a > minSkew {
+		s.perA = 1 / s.a
 	}
-	e := b*b - a*q
-	if e < 0 {
-		return 1, 0
+	if math.Abs(n.X) > minSlant {
+		s.perX = 1 / n.X
+		s.first, s.final = s.low*s.perX, s.high*s.perX
+		if s.first > s.final {
+			s.first, s.final = s.final, s.first
+		}
 	}
-	e = math.Sqrt(e)
-	return max(lo, (b-e)/a), min(hi, (b+e)/a)
+	return s
 }
 
-// minSlant is the sin² of the angle between a row and the normal below which
-// the division in discStretch would lose more than half the digits.
-const minSlant = 1e-8
+// stretch returns the x between which the row at (y, z) can meet the cylinder.
+// It is not ok if it meets it nowhere.
+func (s *rowSolver) stretch(y, z float64) (lo, hi float64, ok bool) {
+	// Heights along the row are t + nx·x. Distances from the axis are within
+	// reach where a·x² − 2·nx·t·x + y² + z² − t² ≤ reach².
+	t := s.n.Y*y + s.n.Z*z
+	beyond := y*y + z*z - t*t - s.reach2
+	lo, hi = math.Inf(-1), math.Inf(1)
+	if s.perA != 0 {
+		b := s.n.X * t
+		e := b*b - s.a*beyond
+		if e < 0 {
+			return 0, 0, false
+		}
+		e = math.Sqrt(e) * s.perA
+		lo, hi = b*s.perA-e, b*s.perA+e
+	} else if beyond > 0 {
+		return 0, 0, false
+	}
+	if s.perX != 0 {
+		foot := t * s.perX
+		if first := s.first - foot; first > lo {
+			lo = first
+		}
+		if final := s.final - foot; final < hi {
+			hi = final
+		}
+	} else if t < s.low || t > s.high {
+		return 0, 0, false
+	}
+	return lo, hi, lo <= hi
+}
 
 // patches returns the landing patches at the picked voxels, sorted by id.
 func (j *judge) patches(picked []int32) []Patch {
