@@ -212,8 +212,8 @@ func (b *builder) ledge(name string, x0, x1, y, z, depth, deg, cot float64) (bac
 	b.truth.Ledges = append(b.truth.Ledges, Ledge{
 		Name:    name,
 		Corners: [4]Position{corner(x0, y, z), corner(x1, y, z), corner(x1, backY, backZ), corner(x0, backY, backZ)},
-		Bay:    b.box(riser, half, 0, high, -depth*math.Sin(a), 0),
-		DepthM: depth, LengthM: x1 - x0, InclinationDeg: deg,
+		Bay:     b.box(riser, half, 0, high, -depth*math.Sin(a), 0),
+		DepthM:  depth, LengthM: x1 - x0, InclinationDeg: deg,
 		FitsPerson: depth >= 2*person+0.2 && x1-x0 >= 2*person && deg <= 25,
 	})
 	return backY, backZ

@@ -132,8 +132,8 @@ func (b *builder) planes() {
 	b.plane("east face", k.onMain(8.3, 12), 3.0, 2.7)
 	b.plane("west wall", onPlane(k.wall, 51.5, 0, 4.2), 4.0, 3.0)
 	b.plane("side face", onPlane(k.side, 0, -8.7, 4.5), 2.2, 2.2)
-	b.plane("platform", onPlane(k.platform, 28, 6.5, 0), 4.0, 4.0)
-	b.plane("crest slope", onPlane(k.crest, 23, -14.5, 0), 4.0, 3.5)
+	b.plane("platform", onPlane(k.platform, 28, 5, 0), 4.0, 3.5)
+	b.plane("crest slope", onPlane(k.crest, 23, -14, 0), 4.0, 3.5)
 }
 
 // edges are where faces meet and the undulation: no obstacles.

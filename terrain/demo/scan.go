@@ -14,7 +14,7 @@ import (
 
 // Defaults of a scan.
 const (
-	DefaultPoints = 2_000_000 // in a season, all stations together
+	DefaultPoints = 2_500_000 // in a season, all stations together
 	DefaultNoiseM = 0.004     // 1 sigma
 	DefaultStrays = 3e-4      // share of the points
 )
@@ -57,10 +57,14 @@ func (o ScanOptions) withDefaults() ScanOptions {
 const Columns = terrain.Intensity | terrain.Color | terrain.Class | terrain.Returns
 
 // surveyed is the box, in the site frame, that the surveyor kept. The
-// platform's outer edge is not in it.
+// platform's outer part is not in it.
 func surveyed() (lo, hi r3.Vec) {
-	return r3.Vec{X: -7, Y: -24, Z: -1.5}, r3.Vec{X: 64.5, Y: platformY - 0.3, Z: 34}
+	return r3.Vec{X: -6.5, Y: -21, Z: -1.5}, r3.Vec{X: 64, Y: platformY - 3, Z: 34}
 }
+
+// leastElevation keeps the masts from looking down their own poles, where the
+// columns of the grid run together.
+const leastElevation = -65 * math.Pi / 180
 
 // A sweep is the angular grid of one station: columns from east to west, each
 // from low to high, as a scanner that spins about a horizontal axis takes them.
@@ -90,6 +94,7 @@ func newSweep(from r3.Vec, step float64) sweep {
 			}
 		}
 	}
+	el0 = max(el0, leastElevation)
 	return sweep{
 		from: from, azimuth: az0, rise: el0, step: step,
 		columns: int((az1-az0)/step) + 1, rows: int((el1-el0)/step) + 1,
@@ -103,26 +108,26 @@ func (s *sweep) ray(column, row float64) r3.Vec {
 	return r3.Vec{X: ce * sa, Y: -ce * ca, Z: se}
 }
 
-// sweeps chooses the angular step that gives about the wanted number of
-// points, by trying a coarse grid.
+// sweeps chooses the angular steps that give about the wanted number of
+// points, by trying coarse grids.
 func (s *Season) sweeps(points int) []sweep {
 	const coarse = 0.02 // radians: about a thousand rays a station
 	hits := 0
 	scratch := make([]int, 0, len(s.solid.features))
-	for _, p := range s.stations {
-		w := newSweep(p, coarse)
+	for _, p := range s.setups {
+		w := newSweep(p.at, coarse*p.step)
 		for c := range w.columns {
 			for r := range w.rows {
-				if _, _, ok := s.first(p, w.ray(float64(c), float64(r)), scratch); ok {
+				if _, _, ok := s.first(p.at, w.ray(float64(c), float64(r)), scratch); ok {
 					hits++
 				}
 			}
 		}
 	}
 	step := coarse * math.Sqrt(float64(max(hits, 1))/float64(points))
-	all := make([]sweep, len(s.stations))
-	for i, p := range s.stations {
-		all[i] = newSweep(p, step)
+	all := make([]sweep, len(s.setups))
+	for i, p := range s.setups {
+		all[i] = newSweep(p.at, step*p.step)
 	}
 	return all
 }
@@ -142,7 +147,7 @@ func (s *Season) first(o, dir r3.Vec, scratch []int) (t float64, surface int, ok
 // the options only, not on the number of workers, which is at least 1. A batch
 // is valid until emit returns. Scan stops at the first error of emit or of ctx.
 func (s *Season) Scan(ctx context.Context, o ScanOptions, workers int, emit func(*terrain.Batch) error) error {
-	for i := range s.stations {
+	for i := range s.setups {
 		if err := s.ScanStation(ctx, i, o, workers, emit); err != nil {
 			return err
 		}

@@ -63,12 +63,12 @@ func (s *Site) toSite(p r3.Vec) r3.Vec {
 // A Season is the site on one day, and how it was scanned. It is immutable and
 // may be used by many goroutines.
 type Season struct {
-	site     *Site
-	number   int
-	solid    solid
-	truth    Truth
-	shrub    frame
-	stations []r3.Vec // site frame
+	site   *Site
+	number int
+	solid  solid
+	truth  Truth
+	shrub  frame
+	setups []setup
 }
 
 // Season returns season n, 1 or 2. It panics on any other number.
@@ -81,7 +81,7 @@ func (s *Site) Season(n int) *Season {
 	t := &Season{
 		site: s, number: n,
 		solid: b.solid(), truth: b.truth, shrub: b.shrub,
-		stations: stations(n),
+		setups: setups(n),
 	}
 	t.truth.Site = s.Name()
 	t.truth.Statement = "Gull Head and the Skerrow branch railway are invented. The coordinates are in the form of EPSG:32633, but nothing of this lies there."
@@ -103,17 +103,27 @@ func (s *Site) registration(n int) Transform {
 	return newTransform(pivot, shift, r3.Vec{X: 0.2, Y: -0.3, Z: 1}, 0.3)
 }
 
-// stations are the scanner's positions, site frame.
-func stations(n int) []r3.Vec {
-	if n == 1 {
-		return []r3.Vec{
-			{X: 2, Y: 34, Z: 3}, {X: 28, Y: 38, Z: 3.5}, {X: 58, Y: 36, Z: 3},
-			{X: -10, Y: 46, Z: 36}, {X: 48, Y: 52, Z: 38},
+// A setup is a scanner's position in the site frame and its angular step
+// relative to the other setups'.
+type setup struct {
+	at   r3.Vec
+	step float64
+}
+
+// setups are three on the skerries off the foot, and two on masts from which
+// treads and the slope above the crest can be seen, with a finer step because
+// they see both at a slant.
+func setups(season int) []setup {
+	const fine = 0.8
+	if season == 1 {
+		return []setup{
+			{r3.Vec{X: 2, Y: 30, Z: 3}, 1.1}, {r3.Vec{X: 30, Y: 34, Z: 3.5}, 1.1}, {r3.Vec{X: 70, Y: 22, Z: 3}, 0.9},
+			{r3.Vec{X: 2, Y: 25, Z: 42}, fine}, {r3.Vec{X: 50, Y: 22, Z: 42}, 0.7},
 		}
 	}
-	return []r3.Vec{
-		{X: 8, Y: 31, Z: 3.2}, {X: 36, Y: 36, Z: 3}, {X: 61, Y: 33, Z: 3.4},
-		{X: 12, Y: 50, Z: 40}, {X: 56, Y: 47, Z: 35},
+	return []setup{
+		{r3.Vec{X: 8, Y: 29, Z: 3.2}, 0.9}, {r3.Vec{X: 36, Y: 34, Z: 3}, 1}, {r3.Vec{X: 67, Y: 24, Z: 3.4}, 1},
+		{r3.Vec{X: 6, Y: 25, Z: 43}, fine}, {r3.Vec{X: 52, Y: 24, Z: 44}, 0.7},
 	}
 }
 
@@ -130,9 +140,9 @@ func (s *Season) Number() int { return s.number }
 
 // Stations are the scanner's positions in the season's delivered coordinates.
 func (s *Season) Stations() []r3.Vec {
-	p := make([]r3.Vec, len(s.stations))
-	for i, q := range s.stations {
-		p[i] = s.truth.Delivered.Apply(s.site.toWorld(q))
+	p := make([]r3.Vec, len(s.setups))
+	for i, q := range s.setups {
+		p[i] = s.truth.Delivered.Apply(s.site.toWorld(q.at))
 	}
 	return p
 }
