@@ -40,13 +40,19 @@ func (e *SurveyError) Error() string { return e.Err.Error() }
 
 func (e *SurveyError) Unwrap() error { return e.Err }
 
-// An OutputError says that the run's folder cannot be made where it should be.
-type OutputError struct {
+// A FolderError says that a folder given for the run cannot be written, or
+// read.
+type FolderError struct {
 	Reason string
-	Remedy string
+	Remedy string // what to do; may be empty
 }
 
-func (e *OutputError) Error() string { return e.Reason + "; " + e.Remedy }
+func (e *FolderError) Error() string {
+	if e.Remedy == "" {
+		return e.Reason
+	}
+	return e.Reason + "; " + e.Remedy
+}
 
 // errorAt is an Error at node n; the file's name is filled in by Parse.
 func errorAt(n ast.Node, reason, remedy string) *Error {

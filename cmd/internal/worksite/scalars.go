@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"strconv"
+	"strings"
 
 	"github.com/goccy/go-yaml"
 	"github.com/goccy/go-yaml/ast"
@@ -101,4 +102,14 @@ func text(n ast.Node) string {
 		s = s[:longest-4] + `…"`
 	}
 	return s
+}
+
+// MarshalJSON writes a list of numbers, where encoding/json would write base64.
+func (c Classes) MarshalJSON() ([]byte, error) {
+	return []byte(c.String()), nil
+}
+
+// String is the classes as a YAML or JSON list.
+func (c Classes) String() string {
+	return "[" + strings.Trim(strings.ReplaceAll(fmt.Sprint([]uint8(c)), " ", ", "), "[]") + "]"
 }

@@ -48,8 +48,8 @@ func list(values any) string {
 			quoted[i] = strconv.Quote(s)
 		}
 		return "[" + strings.Join(quoted, ", ") + "]"
-	case []uint8:
-		return "[" + strings.Trim(strings.ReplaceAll(fmt.Sprint(v), " ", ", "), "[]") + "]"
+	case Classes:
+		return v.String()
 	case [4]float64:
 		return fmt.Sprintf("[%.2f, %.2f, %.2f, %.2f]", v[0], v[1], v[2], v[3])
 	case []Point:
@@ -62,11 +62,16 @@ func list(values any) string {
 	panic(fmt.Sprintf("worksite: list of %T", values))
 }
 
-// BoxAround is a crop box in whole multiples of step that encloses the given
-// east and north bounds.
-func BoxAround(minE, minN, maxE, maxN, step float64) *Crop {
-	down := func(x float64) float64 { return math.Floor(x/step) * step }
-	up := func(x float64) float64 { return math.Ceil(x/step) * step }
+// BoxAround is a crop box in whole metres, or centimetres where the survey is
+// small, that encloses the given east and north bounds.
+func BoxAround(minE, minN, maxE, maxN float64) *Crop {
+	const small = 20 // m
+	perMetre := 1.0
+	if max(maxE-minE, maxN-minN) < small {
+		perMetre = 100
+	}
+	down := func(x float64) float64 { return math.Floor(x*perMetre) / perMetre }
+	up := func(x float64) float64 { return (math.Floor(x*perMetre) + 1) / perMetre } // never a box of no width
 	return &Crop{Box: [4]float64{down(minE), down(minN), up(maxE), up(maxN)}}
 }
 

@@ -14,7 +14,7 @@ func TestText(t *testing.T) {
 	full.Site = `Gull "Head": #1`
 	full.CRS = `PROJCS["x",PARAMETER["y",1]]`
 	full.SpacingM = 0.05
-	full.Crop = BoxAround(500000.12, 6200000.9, 500100.5, 6200050, 1)
+	full.Crop = BoxAround(500000.12, 6200000.9, 500100.5, 6200050)
 	full.Surveys = []Survey{
 		{Date: "2026-05-14", Files: []string{"scan one/*.las", `b\c.las`, "é: #.las"}, CRS: "EPSG:4326", AccuracyM: 0.01,
 			Band: 3, TolerateDefects: true, Sensors: []Point{{1, 2, 3}, {4.125, 5, -6}}, Checkpoints: []Point{{7, 8, 9}}},
@@ -46,8 +46,16 @@ func TestText(t *testing.T) {
 }
 
 func TestBoxAround(t *testing.T) {
-	got := BoxAround(-1.5, 2, 3.01, 4, 1).Box
-	if want := [4]float64{-2, 2, 4, 4}; got != want {
-		t.Errorf("got %v, want %v", got, want)
+	for _, c := range []struct {
+		e0, n0, e1, n1 float64
+		want           [4]float64
+	}{
+		{-1.5, 2, 33.01, 4, [4]float64{-2, 2, 34, 5}},
+		{0.001, 0.5, 0.5, 0.5, [4]float64{0, 0.5, 0.51, 0.51}},
+		{400000, 5e6, 400000, 5e6, [4]float64{400000, 5e6, 400000.01, 5000000.01}},
+	} {
+		if got := BoxAround(c.e0, c.n0, c.e1, c.n1).Box; got != c.want {
+			t.Errorf("got %v, want %v", got, c.want)
+		}
 	}
 }

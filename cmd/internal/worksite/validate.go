@@ -77,7 +77,7 @@ func (w *Worksite) validateObstacles() error {
 	}{
 		{"bulge_height_m", o.BulgeHeightM, 0.001, 1e4},
 		{"overhang_depth_m", o.OverhangDepthM, 0.001, 1e4},
-		{"overhang_tolerance_deg", o.OverhangToleranceDeg, 0, 89},
+		{"overhang_tolerance_deg", o.OverhangToleranceDeg, 0.001, 89},
 		{"recess_depth_m", o.RecessDepthM, 0.001, 1e4},
 		{"min_area_m2", o.MinAreaM2, 1e-6, 1e8},
 	} {

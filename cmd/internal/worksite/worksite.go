@@ -4,6 +4,8 @@ import (
 	"path/filepath"
 
 	"github.com/goccy/go-yaml/ast"
+
+	"ledgework/hazards"
 )
 
 // A Worksite says what was surveyed, what will be set down there and what
@@ -15,7 +17,7 @@ type Worksite struct {
 	Crop      *Crop      `yaml:"crop" json:"crop,omitempty"` // nothing outside it is read
 	Voxels    string     `yaml:"voxels" json:"voxels,omitempty"`
 	Surveys   []Survey   `yaml:"surveys" json:"surveys"`
-	Exclude   []uint8    `yaml:"exclude_classes" json:"exclude_classes"` // LAS classes left out
+	Exclude   Classes    `yaml:"exclude_classes" json:"exclude_classes"` // LAS classes left out
 	Platform  Platform   `yaml:"platform" json:"platform"`
 	Obstacles Obstacles  `yaml:"obstacles" json:"obstacles"`
 	Outputs   []string   `yaml:"outputs" json:"outputs"`
@@ -36,6 +38,9 @@ type Survey struct {
 	Checkpoints     []Point  `yaml:"checkpoints" json:"checkpoints,omitempty"`
 }
 
+// Classes are LAS classification codes.
+type Classes []uint8
+
 // A Point is a position in the working CRS: E, N, H in metres.
 type Point [3]float64
 
@@ -48,7 +53,8 @@ type Crop struct {
 	Box  [4]float64 // Emin, Nmin, Emax, Nmax in metres, if File is empty
 }
 
-// Obstacles are the thresholds of what a rope, a load or a foot catches on.
+// Obstacles are the thresholds of what a rope, a load or a foot catches on. The
+// keys are those of hazards.ObstacleOptions; a radius may be auto.
 type Obstacles struct {
 	BulgeHeightM         float64    `yaml:"bulge_height_m" json:"bulge_height_m"`
 	OverhangDepthM       float64    `yaml:"overhang_depth_m" json:"overhang_depth_m"`
@@ -57,6 +63,21 @@ type Obstacles struct {
 	MinAreaM2            float64    `yaml:"min_area_m2" json:"min_area_m2"`
 	ReferenceRadiusM     AutoLength `yaml:"reference_radius_m" json:"reference_radius_m"`
 	SurfaceRadiusM       AutoLength `yaml:"surface_radius_m" json:"surface_radius_m"`
+}
+
+// options are the thresholds as the search takes them; clearance grows the
+// second set of ellipsoids.
+func (o Obstacles) options(clearanceM float64) hazards.ObstacleOptions {
+	return hazards.ObstacleOptions{
+		BulgeHeightM:         o.BulgeHeightM,
+		OverhangDepthM:       o.OverhangDepthM,
+		OverhangToleranceDeg: o.OverhangToleranceDeg,
+		RecessDepthM:         o.RecessDepthM,
+		MinAreaM2:            o.MinAreaM2,
+		ReferenceRadiusM:     float64(o.ReferenceRadiusM),
+		SurfaceRadiusM:       float64(o.SurfaceRadiusM),
+		ClearanceM:           clearanceM,
+	}
 }
 
 // Path is the file that w was loaded from, empty if there is none.
