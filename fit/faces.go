@@ -12,44 +12,59 @@ import (
 // What makes a set of members within the reference radius R a face. Areas are
 // shares of the disc πR².
 const (
-	// majorShare keeps a block of up to about 0.69 R square (3.4 m at R = 5 m)
+	// majorShare keeps a block of up to about 0.59 R square (2.9 m at R = 5 m)
 	// an object on the face instead of a face of its own.
-	majorShare = 0.15
+	majorShare = 0.11
 
-	// A narrow strip in another direction, a ledge's tread for instance, is a
-	// face as well if it runs across the disc.
-	minorShare   = 0.035
-	minorCosine  = 0.866 // at least 30° from every major face
-	minorLengthR = 0.6
+	// A smaller piece is a face as well if it is long and either joins two
+	// faces, as a ledge's tread joins the wall above and the wall below, or lies
+	// between two parallel ones, as the wall between two ledges does. The side of
+	// a block touches one face only; its front has nothing before it.
+	minorShare   = 0.02
+	minorLengthR = 0.4
+	minorTouch   = 0.4 // share of its length along which each of the two touches it
+	minorCosine  = 0.9 // at least 25° from the faces it joins
 
-	maxFaces = 6
+	maxFaces = 8
 
 	seedCosine  = 0.866 // members within 30° of a seed support it
 	faceCosine  = 0.766 // and within 40° of the face may belong to it
 	seedMisfit  = 0.7   // distance from a seed's plane, in ProudM
-	minMisfit   = 0.5   // bounds of the biweight's cutoff, in ProudM: below,
-	maxMisfit   = 1.5   // noise would be an outlier; above, what is looked for would not
-	seedsTried  = 40
-	seedMembers = 500 // members that vote for a seed
-	refinements = 8
+	minMisfit   = 0.4   // bounds of the biweight's cutoff, in ProudM: below,
+	maxMisfit   = 0.8   // noise would be an outlier; above, what is looked for would not
+	seedsTried  = 30
+	seedMembers = 300 // members that vote for a seed
+	refinements = 6
+
+	settledRad = 1e-4 // change of the normal at which refinement may stop
 )
 
-// A neighbourhood is what lies within the reference radius of a centre:
-// members relative to it, with outward normals and the surface area that each
+// A hoodMember is what lies within the reference radius of a centre: its mean
+// relative to the centre, its outward normal and the surface area that it
 // stands for.
-type neighbourhood struct {
-	pos, normal []r3.Vec
-	area        []float64
-	face        []int8 // face a member was taken by, -1 none
+type hoodMember struct {
+	pos, normal r3.Vec
+	area        float64
+	face        int8 // piece that took it, -1 none
 }
 
-// A face is a smooth piece of reference surface near a centre.
+// A neighbourhood is everything within the reference radius of a centre.
+type neighbourhood struct {
+	members   []hoodMember
+	free      []int32 // members that no piece has taken, ascending
+	residuals []float64
+	spacing   float64 // edge of the members' voxels
+}
+
+// A face is a smooth piece of reference surface near a centre. A piece that
+// does not qualify keeps its place, with accepted false.
 type face struct {
-	plane   facePlane
-	surface quadric
-	area    float64 // of its inliers, m²
-	nearest float64 // distance of its nearest inlier from the centre, m
-	major   bool
+	plane    facePlane
+	surface  quadric
+	cutoff   float64 // misfit from which a member is an outlier, m
+	area     float64 // of its inliers, m²
+	nearest  float64 // distance of its nearest inlier from the centre, m
+	accepted bool
 }
 
 // facePlane is n·x = d relative to the neighbourhood's centre.
@@ -60,17 +75,23 @@ type facePlane struct {
 
 func (p facePlane) signed(x r3.Vec) float64 { return r3.Dot(p.n, x) - p.d }
 
-// findFaces takes the faces out of the neighbourhood one by one, best supported
-// first, and returns them sorted by the distance of their nearest inlier.
+// findFaces takes smooth pieces out of the neighbourhood one by one, best
+// supported first, and accepts those that are faces. Members are marked with
+// the index of their piece.
 func (h *neighbourhood) findFaces(faces []face, radiusM, proudM float64) []face {
 	faces = faces[:0]
 	disc := math.Pi * radiusM * radiusM
-	for i := range h.face {
-		h.face[i] = -1
+	h.free = h.free[:0]
+	for i := range h.members {
+		h.members[i].face = -1
+		if h.members[i].normal != (r3.Vec{}) {
+			h.free = append(h.free, int32(i))
+		}
 	}
 	for n := range maxFaces {
-		p, ok := h.bestSeed(proudM)
-		if !ok {
+		p, support := h.bestSeed(proudM)
+		// A seed's support is sampled, and refinement gains or loses some.
+		if support < minorShare*disc/2 {
 			break
 		}
 		p, cutoff, ok := h.refine(p, proudM)
@@ -78,70 +99,72 @@ func (h *neighbourhood) findFaces(faces []face, radiusM, proudM float64) []face 
 			break
 		}
 		f := h.take(p, cutoff, int8(n))
-		switch {
-		case f.area >= majorShare*disc:
-			f.major = true
-		case f.area >= minorShare*disc && h.isStrip(&f, int8(n), faces, radiusM):
-		default:
-			// Leave its members marked, so that the next seed is another.
-			f.area = 0
-		}
-		if f.area > 0 {
-			f.surface = h.fitQuadric(p, int8(n), cutoff, radiusM)
-			f.plane = p
-		}
+		f.accepted = f.area >= majorShare*disc
 		faces = append(faces, f)
 	}
-	// Marks refer to the order of extraction: settle relations need them, so
-	// rejected pieces keep their place until here.
+	h.acceptMinor(faces, radiusM)
+	for n := range faces {
+		if f := &faces[n]; f.accepted {
+			f.surface = h.fitQuadric(f.plane, int8(n), f.cutoff, radiusM)
+		}
+	}
 	return faces
 }
 
-// bestSeed is the plane through a member, along its normal, that most area
-// among the members not taken yet agrees with.
-func (h *neighbourhood) bestSeed(proudM float64) (facePlane, bool) {
-	stride := max(1, len(h.pos)/seedMembers)
-	seedStride := max(1, len(h.pos)/seedsTried)
-	var best facePlane
-	var most float64
-	for s := seedStride / 2; s < len(h.pos); s += seedStride {
-		if h.face[s] >= 0 || h.normal[s] == (r3.Vec{}) {
-			continue
+// acceptMinor accepts the smaller pieces that join two faces, until no more
+// do: a bay's end wall may join the wall and another end wall.
+func (h *neighbourhood) acceptMinor(faces []face, radiusM float64) {
+	least := minorShare * math.Pi * radiusM * radiusM
+	for more := true; more; {
+		more = false
+		for n := range faces {
+			if f := &faces[n]; !f.accepted && f.area >= least &&
+				(h.between(faces, n, least) || h.joins(faces, n)) && h.length(n) >= minorLengthR*radiusM {
+				f.accepted, more = true, true
+			}
 		}
-		p := facePlane{h.normal[s], r3.Dot(h.normal[s], h.pos[s])}
+	}
+}
+
+// bestSeed is the plane through a free member, along its normal, that most area
+// among the free members agrees with, and about how much that is.
+func (h *neighbourhood) bestSeed(proudM float64) (best facePlane, most float64) {
+	stride := max(1, len(h.free)/seedMembers)
+	seedStride := max(1, len(h.free)/seedsTried)
+	for s := seedStride / 2; s < len(h.free); s += seedStride {
+		seed := &h.members[h.free[s]]
+		p := facePlane{seed.normal, r3.Dot(seed.normal, seed.pos)}
 		var sum float64
-		for i := s % stride; i < len(h.pos); i += stride {
-			if h.face[i] < 0 && math.Abs(p.signed(h.pos[i])) < seedMisfit*proudM && r3.Dot(p.n, h.normal[i]) > seedCosine {
-				sum += h.area[i]
+		for i := s % stride; i < len(h.free); i += stride {
+			m := &h.members[h.free[i]]
+			if math.Abs(p.signed(m.pos)) < seedMisfit*proudM && r3.Dot(p.n, m.normal) > seedCosine {
+				sum += m.area
 			}
 		}
 		if sum > most {
 			best, most = p, sum
 		}
 	}
-	return best, most > 0
+	return best, most * float64(stride)
 }
 
-// refine fits the plane to the members around it by iterated total least
+// refine fits the plane to the free members around it by iterated total least
 // squares with Tukey's biweight (Beaton & Tukey 1974, Technometrics 16:147),
 // scaled by the median absolute residual. Members whose normals are more than
-// 40° off take no part, nor do those that an earlier face took.
+// 40° off take no part.
 func (h *neighbourhood) refine(p facePlane, proudM float64) (facePlane, float64, bool) {
 	cutoff := maxMisfit * proudM
-	residuals := make([]float64, 0, len(h.pos))
 	for range refinements {
-		residuals = residuals[:0]
+		h.residuals = h.residuals[:0]
 		var m momentSum
-		for i, x := range h.pos {
-			if h.face[i] >= 0 || r3.Dot(p.n, h.normal[i]) < faceCosine {
+		for _, i := range h.free {
+			x := &h.members[i]
+			d := p.signed(x.pos)
+			if math.Abs(d) >= cutoff || r3.Dot(p.n, x.normal) < faceCosine {
 				continue
 			}
-			d := p.signed(x)
-			if math.Abs(d) >= cutoff {
-				continue
-			}
-			residuals = append(residuals, math.Abs(d))
-			m.add(x, h.area[i]*tukeyWeight(d/cutoff))
+			h.residuals = append(h.residuals, math.Abs(d))
+			m.add(x.pos, x.area*tukeyWeight(d/cutoff))
 		}
 		c, centroid, ok := m.covariance()
 		if !ok {
@@ -152,59 +175,120 @@ func (h *neighbourhood) refine(p facePlane, proudM float64) (facePlane, float64,
 		if r3.Dot(n, p.n) < 0 {
 			n = r3.Scale(-1, n)
 		}
+		turned := r3.Norm(r3.Sub(n, p.n))
 		p = facePlane{n, r3.Dot(n, centroid)}
-		slices.Sort(residuals)
-		scale := madToSigma * residuals[len(residuals)/2]
+		slices.Sort(h.residuals)
+		scale := madToSigma * h.residuals[len(h.residuals)/2]
 		cutoff = min(max(tukeyCutoff*scale, minMisfit*proudM), maxMisfit*proudM)
+		if turned < settledRad {
+			break
+		}
 	}
 	return p, cutoff, true
 }
 
-// take marks the members of the face around p and measures it.
+// take marks the free members of the piece around p and measures it.
 func (h *neighbourhood) take(p facePlane, cutoff float64, mark int8) face {
-	f := face{plane: p, nearest: math.Inf(1)}
-	for i, x := range h.pos {
-		if h.face[i] >= 0 || r3.Dot(p.n, h.normal[i]) < faceCosine || math.Abs(p.signed(x)) >= cutoff {
+	f := face{plane: p, cutoff: cutoff, nearest: math.Inf(1)}
+	left := h.free[:0]
+	for _, i := range h.free {
+		m := &h.members[i]
+		if math.Abs(p.signed(m.pos)) >= cutoff || r3.Dot(p.n, m.normal) < faceCosine {
+			left = append(left, i)
 			continue
 		}
-		h.face[i] = mark
-		f.area += h.area[i]
-		f.nearest = min(f.nearest, r3.Norm(x))
+		m.face = mark
+		f.area += m.area
+		f.nearest = min(f.nearest, r3.Norm(m.pos))
 	}
+	h.free = left
 	return f
 }
 
-// isStrip reports whether the face with the given mark runs across the disc in
-// a direction of its own.
-func (h *neighbourhood) isStrip(f *face, mark int8, others []face, radiusM float64) bool {
-	for i := range others {
-		if others[i].major && r3.Dot(others[i].plane.n, f.plane.n) > minorCosine {
-			return false
-		}
-	}
+// length is that of a uniform strip with the variance of piece n along it,
+// which is L²/12.
+func (h *neighbourhood) length(n int) float64 {
 	var m momentSum
-	for i, x := range h.pos {
-		if h.face[i] == mark {
-			m.add(x, h.area[i])
+	for i := range h.members {
+		if h.members[i].face == int8(n) {
+			m.add(h.members[i].pos, h.members[i].area)
 		}
 	}
-	c, _, ok := m.covariance()
-	if !ok {
-		return false
-	}
+	c, _, _ := m.covariance()
 	lambda, _ := EigenSym3(c)
-	// A uniform strip of length L has variance L²/12 along it.
-	return math.Sqrt(12*lambda[2]) >= minorLengthR*radiusM
+	return math.Sqrt(12 * lambda[2])
 }
 
-// meanSigned is the mean signed distance of the members marked with mark from
-// the plane p.
+// between reports whether piece n stands before an accepted face and behind
+// another piece, all about parallel.
+func (h *neighbourhood) between(faces []face, n int, leastM2 float64) bool {
+	before, behind := false, false
+	for k := range faces {
+		f := &faces[k]
+		if k == n || f.area < leastM2 || r3.Dot(f.plane.n, faces[n].plane.n) < minorCosine {
+			continue
+		}
+		switch d := h.meanSigned(f.plane, int8(n)); {
+		case d > f.cutoff && f.accepted:
+			before = true
+		case d < -f.cutoff:
+			behind = true
+		}
+	}
+	return before && behind
+}
+
+// joins reports whether piece n runs along two accepted faces that point
+// elsewhere.
+func (h *neighbourhood) joins(faces []face, n int) bool {
+	var own []r3.Vec
+	for i := range h.members {
+		if h.members[i].face == int8(n) {
+			own = append(own, h.members[i].pos)
+		}
+	}
+	length := h.length(n)
+	touched := 0
+	for k := range faces {
+		if faces[k].accepted && r3.Dot(faces[k].plane.n, faces[n].plane.n) < minorCosine &&
+			h.touching(own, int8(k)) >= minorTouch*length {
+			touched++
+		}
+	}
+	return touched >= 2
+}
+
+// touchCells is the distance, in members' spacings, up to which members of two
+// pieces touch: those on the edge between, whose normals belong to neither,
+// are left out of both.
+const touchCells = 3.5
+
+// touching is about the length along which the members at own lie next to
+// members of face k.
+func (h *neighbourhood) touching(own []r3.Vec, k int8) float64 {
+	reach := touchCells * h.spacing
+	count := 0
+	for _, p := range own {
+		for i := range h.members {
+			m := &h.members[i]
+			if m.face == k && r3.Norm2(r3.Sub(m.pos, p)) <= reach*reach {
+				count++
+				break
+			}
+		}
+	}
+	// About touchCells−1 rows of members lie within reach of an edge.
+	return float64(count) * h.spacing / (touchCells - 1)
+}
+
+// meanSigned is the mean signed distance of the members of piece mark from the
+// plane p.
 func (h *neighbourhood) meanSigned(p facePlane, mark int8) float64 {
 	var sum, area float64
-	for i, x := range h.pos {
-		if h.face[i] == mark {
-			sum += h.area[i] * p.signed(x)
-			area += h.area[i]
+	for i := range h.members {
+		if m := &h.members[i]; m.face == mark {
+			sum += m.area * p.signed(m.pos)
+			area += m.area
 		}
 	}
 	return sum / area

@@ -45,12 +45,13 @@ func (h *neighbourhood) fitQuadric(p facePlane, mark int8, cutoff, radiusM float
 		var a [21]float64 // upper triangle of the normal equations, row by row
 		var b [6]float64
 		var squares, weight float64
-		for i, x := range h.pos {
-			if h.face[i] != mark {
+		for i := range h.members {
+			if h.members[i].face != mark {
 				continue
 			}
+			x := h.members[i].pos
 			d, _ := q.at(x)
-			w := h.area[i] * tukeyWeight(d/cutoff)
+			w := h.members[i].area * tukeyWeight(d/cutoff)
 			if w == 0 {
 				continue
 			}

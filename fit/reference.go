@@ -44,7 +44,7 @@ type ReliefInput struct {
 // bulge either. Where two faces meet, relief is the distance from the solid
 // that they bound: the larger of the two distances at an outer corner or crest,
 // the smaller at an inner corner or foot; on the step between two parallel
-// faces it is zero.
+// faces it is zero. A voxel that lies on a face is measured against that alone.
 func FindRelief(ctx context.Context, in *ReliefInput, workers int) (*Relief, error) {
 	n := in.At.Len()
 	out := &Relief{Height: make([]float64, n), Normal: make([]r3.Vec, n)}
@@ -88,6 +88,7 @@ type reliefWorker struct {
 	hood   neighbourhood
 	faces  []face
 	chosen []chosenFace
+	close  []int32 // members near the centre's cell
 }
 
 // A chosenFace bounds the solid near a centre, in relation to the first.
@@ -110,27 +111,73 @@ func (w *reliefWorker) around(centre int, voxels []int32) {
 	w.gather(c)
 	w.faces = w.hood.findFaces(w.faces, w.in.RadiusM, w.in.ProudM)
 	w.choose()
+	w.gatherClose(w.in.Centres.Lattice.Centre(w.in.Centres.Cells[centre]), c)
 	for _, v := range voxels {
 		if len(w.chosen) == 0 {
 			w.out.Height[v] = math.NaN()
 			continue
 		}
-		w.out.Height[v], w.out.Normal[v] = w.relief(r3.Sub(w.in.At.Mean(int(v)), c))
+		x := r3.Sub(w.in.At.Mean(int(v)), c)
+		if d, n, ok := w.onFace(x); ok {
+			w.out.Height[v], w.out.Normal[v] = d, n
+			continue
+		}
+		w.out.Height[v], w.out.Normal[v] = w.relief(x)
 	}
+}
+
+// A voxel lies on a face if a member of the face is within onFaceCells members'
+// spacings and the face passes within its cutoff. Its own normal is not asked:
+// on an edge it is neither face's.
+const onFaceCells = 2
+
+// gatherClose lists the members of accepted faces near the centre's cell, whose
+// own centre is cell, for the voxels in it.
+func (w *reliefWorker) gatherClose(cell, c r3.Vec) {
+	w.close = w.close[:0]
+	half := w.in.Centres.Lattice.SpacingM()/2 + onFaceCells*w.hood.spacing
+	offset := r3.Sub(cell, c)
+	for i := range w.hood.members {
+		m := &w.hood.members[i]
+		d := r3.Sub(m.pos, offset)
+		if m.face >= 0 && w.faces[m.face].accepted &&
+			math.Abs(d.X) <= half && math.Abs(d.Y) <= half && math.Abs(d.Z) <= half {
+			w.close = append(w.close, int32(i))
+		}
+	}
+}
+
+// onFace returns the distance of x from the face that it lies on, the nearest
+// if there are several.
+func (w *reliefWorker) onFace(x r3.Vec) (float64, r3.Vec, bool) {
+	reach := onFaceCells * w.hood.spacing
+	var seen uint32
+	best, found := math.Inf(1), false
+	var n r3.Vec
+	for _, i := range w.close {
+		m := &w.hood.members[i]
+		if seen>>m.face&1 != 0 || r3.Norm2(r3.Sub(m.pos, x)) > reach*reach {
+			continue
+		}
+		seen |= 1 << m.face
+		f := &w.faces[m.face]
+		d, fn := f.surface.at(x)
+		if math.Abs(d) < f.cutoff && math.Abs(d) < math.Abs(best) {
+			best, n, found = d, fn, true
+		}
+	}
+	return best, n, found
 }
 
 func (w *reliefWorker) gather(c r3.Vec) {
 	w.near = w.in.Members.Within(w.near[:0], c, w.in.RadiusM)
 	h := &w.hood
-	h.pos, h.normal, h.area = h.pos[:0], h.normal[:0], h.area[:0]
-	g := w.in.Members.Voxels().Lattice.SpacingM()
+	h.members = h.members[:0]
+	h.spacing = w.in.Members.Voxels().Lattice.SpacingM()
 	for _, i := range w.near {
 		n := w.in.Planes.Normal[i]
-		h.pos = append(h.pos, r3.Sub(w.in.Members.Mean(int(i)), c))
-		h.normal = append(h.normal, n)
-		h.area = append(h.area, CellArea(g, n))
+		h.members = append(h.members, hoodMember{r3.Sub(w.in.Members.Mean(int(i)), c), n, CellArea(h.spacing, n), -1})
 	}
-	h.face = slices.Grow(h.face[:0], len(h.pos))[:len(h.pos)]
 }
 
 // CellArea is the surface area in m² that one occupied voxel of edge g stands
@@ -152,7 +199,7 @@ func (w *reliefWorker) choose() {
 	w.chosen = w.chosen[:0]
 	primary := -1
 	for i := range w.faces {
-		if f := &w.faces[i]; f.area > 0 && (primary < 0 || f.nearest < w.faces[primary].nearest) {
+		if f := &w.faces[i]; f.accepted && (primary < 0 || f.nearest < w.faces[primary].nearest) {
 			primary = i
 		}
 	}
@@ -165,7 +212,7 @@ func (w *reliefWorker) choose() {
 	reach := p.nearest + 1.25*w.in.Centres.Lattice.SpacingM()
 	for i := range w.faces {
 		f := &w.faces[i]
-		if i == primary || f.area == 0 || f.nearest > reach {
+		if i == primary || !f.accepted || f.nearest > reach {
 			continue
 		}
 		w.chosen = append(w.chosen, chosenFace{f, w.meeting(primary, i)})
