@@ -110,8 +110,11 @@ func DipDirectionDeg(n r3.Vec) (deg float64, ok bool) {
 	return azimuthDeg(n.X, n.Y), true
 }
 
-// azimuthDeg is the azimuth of (east, north) in [0, 360) degrees.
+// azimuthDeg is the azimuth of (east, north) in [0, 360) degrees, 0 for none.
 func azimuthDeg(east, north float64) float64 {
+	if east == 0 && north == 0 { // signed zeros have a direction to Atan2
+		return 0
+	}
 	a := degrees(math.Atan2(east, north))
 	if a < 0 {
 		a += 360

@@ -207,8 +207,9 @@ func TestProgramCGAL(t *testing.T) {
 		}
 		ratio := e.Volume() / want
 		t.Logf("%s: volume %.10g, CGAL %.10g, ratio − 1 = %.2g", kind, e.Volume(), want, ratio-1)
-		// CGAL stays above the least by about its epsilon; ours must not.
-		if !(ratio < 1+1e-8 && ratio > 1-1.1e-6) {
+		// CGAL's lifted form reaches 4·(1+1e-6), so its volume is up to
+		// (1+4/3·1e-6)^(3/2) of the least; ours must not be above.
+		if !(ratio < 1+1e-8 && ratio > 1-2.1e-6) {
 			t.Errorf("%s: volume %.10g, CGAL %.10g", kind, e.Volume(), want)
 		}
 		if d := r3.Norm(r3.Sub(e.Centre, c)); !(d < 1e-3) {
