@@ -102,20 +102,49 @@ func toGlobe(s shape, p Projector) (globe, error) {
 }
 
 // unwrap makes a ring of which no edge spans more than half a turn. One that
-// goes right round a pole is led along it, so that it encloses the pole.
+// goes right round a pole is cut at the antimeridian and led along the pole, so
+// that it encloses it.
 func unwrap(lon, lat, height []float64) (orb.Ring, []float64) {
-	r, h := make(orb.Ring, 0, len(lon)), slices.Clone(height)
+	r, h := make(orb.Ring, 0, len(lon)+4), slices.Clone(height)
 	last := lon[0]
 	for i := range lon {
 		last = lon[i] + 360*math.Round((last-lon[i])/360)
 		r = append(r, orb.Point{roundLonLat(last), lat[i]})
 	}
-	if first, end := r[0], r[len(r)-1]; first != end {
-		pole := math.Copysign(90, lat[0])
-		r = append(r, orb.Point{end[0], pole}, orb.Point{first[0], pole}, first)
-		h = append(h, h[0], h[0], h[0])
+	if r[0] == r[len(r)-1] {
+		return r, h
 	}
-	return r, h
+	return roundPole(lon, lat, h)
+}
+
+// roundPole is the ring in longitudes -180 to 180 of a closed sequence of
+// positions that goes round a pole once.
+func roundPole(lon, lat, height []float64) (orb.Ring, []float64) {
+	n := len(lon) - 1 // without the repeated first one
+	seam := 0         // the first position after the antimeridian
+	for i := range n {
+		if math.Abs(lon[i]-lon[(i+n-1)%n]) > 180 {
+			seam = i
+			break
+		}
+	}
+	before := (seam + n - 1) % n
+	side := math.Copysign(180, lon[before])
+	// Where the edge from before to seam meets the antimeridian.
+	share := 0.0
+	if gap := lon[seam] + 2*side - lon[before]; gap != 0 {
+		share = (side - lon[before]) / gap
+	}
+	cut, cutHeight := lat[before]+share*(lat[seam]-lat[before]), height[before]+share*(height[seam]-height[before])
+	pole := math.Copysign(90, lat[0])
+
+	r, h := orb.Ring{{-side, cut}}, []float64{cutHeight}
+	for i := range n {
+		at := (seam + i) % n
+		r, h = append(r, orb.Point{lon[at], lat[at]}), append(h, height[at])
+	}
+	r = append(r, orb.Point{side, cut}, orb.Point{side, pole}, orb.Point{-side, pole}, r[0])
+	return r, append(h, cutHeight, cutHeight, cutHeight, cutHeight)
 }
 
 // add appends a polygon with unwrapped longitudes, cut at the antimeridian.

@@ -2,24 +2,25 @@ package export
 
 import (
 	"crypto/sha256"
+	"encoding/binary"
 	"encoding/hex"
 	"encoding/json"
 	"errors"
 	"fmt"
 	"io"
 	"math"
-	"math/bits"
 	"slices"
 	"strconv"
 
 	"github.com/parquet-go/parquet-go"
+	"github.com/parquet-go/parquet-go/format"
 
 	"ledgework/terrain"
 )
 
 // ReadVoxels reads what WriteVoxels wrote, exactly. Everything that later
-// arithmetic relies on is checked: order, limits of every sum, and a checksum
-// over all data. Damage, and Parquet files of other origin, are a
+// arithmetic relies on is checked: a checksum over all bytes, before any is
+// decoded; order; limits of every sum. Damage, and Parquet files of other origin, are a
 // terrain.FormatError; files of a later version a terrain.UnsupportedError.
 func ReadVoxels(r io.ReaderAt, size int64) (v *terrain.Voxels, meta VoxelMeta, err error) {
 	// The Parquet package panics on some kinds of damaged footer.
@@ -28,15 +29,15 @@ func ReadVoxels(r io.ReaderAt, size int64) (v *terrain.Voxels, meta VoxelMeta, e
 			v, meta, err = nil, VoxelMeta{}, voxelError("footer", fmt.Sprintf("damaged: %v", p), nil)
 		}
 	}()
+	if err := checkSeal(r, size); err != nil {
+		return nil, meta, err
+	}
 	f, err := parquet.OpenFile(r, size, parquet.SkipPageIndex(true), parquet.SkipBloomFilters(true), parquet.ReadBufferSize(1<<18))
 	if err != nil {
 		return nil, meta, voxelError("footer", "not a readable Parquet file", err)
 	}
 	lattice, meta, err := readVoxelKeys(f)
 	if err != nil {
-		return nil, meta, err
-	}
-	if err := checkSum(f, r, size); err != nil {
 		return nil, meta, err
 	}
 	v = &terrain.Voxels{Lattice: lattice}
@@ -78,6 +79,46 @@ func ReadVoxels(r io.ReaderAt, size int64) (v *terrain.Voxels, meta VoxelMeta, e
 	return v, meta, nil
 }
 
+// checkSeal compares the checksum over the whole file, so that damage is found
+// before any of it is decoded.
+func checkSeal(r io.ReaderAt, size int64) error {
+	const tail = 8 // length of the footer, then the magic "PAR1"
+	if size < tail+4 {
+		return voxelError("", fmt.Sprintf("%d bytes are too few for a Parquet file", size), nil)
+	}
+	var b [tail]byte
+	if _, err := r.ReadAt(b[:], size-tail); err != nil {
+		return fmt.Errorf("export: %s: %w", VoxelsName, err)
+	}
+	n := int64(binary.LittleEndian.Uint32(b[:]))
+	if string(b[4:]) != "PAR1" || n > min(size-tail-4, maxFooterBytes) {
+		return voxelError(fmt.Sprintf("byte %d", size-tail), "no Parquet footer: the file is cut off or of another kind", nil)
+	}
+	footer := make([]byte, n+tail)
+	if _, err := r.ReadAt(footer, size-n-tail); err != nil {
+		return fmt.Errorf("export: %s: %w", VoxelsName, err)
+	}
+	at := sealAt(footer)
+	if at < 0 {
+		return voxelError("footer", "key "+keySum+" is missing: this Parquet file holds no voxels", nil)
+	}
+	want := string(footer[at : at+2*sha256.Size])
+	copy(footer[at:], unsealed())
+	sum := sha256.New()
+	if _, err := io.CopyBuffer(sum, io.NewSectionReader(r, 0, size-n-tail), make([]byte, 1<<20)); err != nil {
+		return fmt.Errorf("export: %s: %w", VoxelsName, err)
+	}
+	sum.Write(footer)
+	if hex.EncodeToString(sum.Sum(nil)) != want {
+		return voxelError(fmt.Sprintf("bytes 0 to %d", size), "the checksum does not match: the file was damaged or changed", nil)
+	}
+	return nil
+}
+
+// maxFooterBytes is the largest footer: 1 kB for each column of the 8 192 row
+// groups that 2^31 voxels need, and the meta.
+const maxFooterBytes = 256 << 20
+
 // voxelError is a terrain.FormatError of the voxel file.
 func voxelError(place, reason string, err error) error {
 	return &terrain.FormatError{
@@ -88,12 +129,9 @@ func voxelError(place, reason string, err error) error {
 
 // readVoxelKeys reads what the file says of itself.
 func readVoxelKeys(f *parquet.File) (l terrain.Lattice, meta VoxelMeta, err error) {
-	format, ok := f.Lookup(keyFormat)
-	if !ok {
-		return l, meta, voxelError("footer", "key "+keyFormat+" is missing: this Parquet file holds no voxels", nil)
-	}
-	if format != voxelFormat {
-		return l, meta, &terrain.UnsupportedError{Format: VoxelsName, Feature: "format " + strconv.Quote(format), Remedy: "use the version of ledgework that wrote it, or a later one"}
+	version, _ := f.Lookup(keyFormat)
+	if version != voxelFormat {
+		return l, meta, &terrain.UnsupportedError{Format: VoxelsName, Feature: "format " + strconv.Quote(version), Remedy: "use the version of ledgework that wrote it, or a later one"}
 	}
 	number := func(key string) (n int64) {
 		text, ok := f.Lookup(key)
@@ -119,25 +157,6 @@ func readVoxelKeys(f *parquet.File) (l terrain.Lattice, meta VoxelMeta, err erro
 		return l, meta, voxelError("footer", "key "+keyMeta+" is damaged", err)
 	}
 	return l, meta, nil
-}
-
-// checkSum compares the checksum over all data, so that damage is found before
-// any of it is decoded.
-func checkSum(f *parquet.File, r io.ReaderAt, size int64) error {
-	text, _ := f.Lookup(keyBytes)
-	n, err := strconv.ParseInt(text, 10, 64)
-	if err != nil || n < 0 || n > size {
-		return voxelError("footer", fmt.Sprintf("key %s is %q in a file of %d bytes", keyBytes, text, size), nil)
-	}
-	want, _ := f.Lookup(keySum)
-	sum := sha256.New()
-	if _, err := io.CopyBuffer(sum, io.NewSectionReader(r, 0, n), make([]byte, 1<<20)); err != nil {
-		return fmt.Errorf("export: %s: %w", VoxelsName, err)
-	}
-	if hex.EncodeToString(sum.Sum(nil)) != want {
-		return voxelError(fmt.Sprintf("bytes 0 to %d", n), "the checksum does not match: the file was damaged or changed", nil)
-	}
-	return nil
 }
 
 // matchSchema finds the place of each leaf column, nil for the leaves of the
@@ -198,6 +217,11 @@ func checkRowGroups(f *parquet.File) error {
 	}
 	var rows int64
 	for i, rg := range f.RowGroups() {
+		for _, c := range f.Metadata().RowGroups[i].Columns {
+			if c.MetaData.Codec != format.Zstd {
+				return voxelError(fmt.Sprintf("row group %d", i), fmt.Sprintf("compression %v, not zstd", c.MetaData.Codec), nil)
+			}
+		}
 		n := rg.NumRows()
 		if n < 1 || n > rowGroupRows {
 			return voxelError(fmt.Sprintf("row group %d", i), fmt.Sprintf("%d rows, not 1 to %d", n, rowGroupRows), nil)
@@ -330,65 +354,4 @@ func eachValue(pages parquet.Pages, use func(parquet.Value) error) error {
 		}
 		parquet.Release(page)
 	}
-}
-
-// checkVoxels checks what arithmetic on voxels relies on.
-func checkVoxels(v *terrain.Voxels) error {
-	half, limit := v.Lattice.Quanta()/2, v.Lattice.MaxPoints()
-	for i := range v.Cells {
-		m := &v.Moments[i]
-		if i > 0 && v.Cells[i-1].Compare(v.Cells[i]) >= 0 {
-			return voxelError(fmt.Sprintf("row %d", i), "voxels are out of order or repeated", nil)
-		}
-		if m.N < 1 || m.N > limit {
-			return voxelError(fmt.Sprintf("row %d", i), fmt.Sprintf("%d points, not 1 to %d", m.N, limit), nil)
-		}
-		if !plausible(m.N, half, m.X, m.XX) || !plausible(m.N, half, m.Y, m.YY) || !plausible(m.N, half, m.Z, m.ZZ) ||
-			!within(m.XY, m.XX, m.YY) || !within(m.XZ, m.XX, m.ZZ) || !within(m.YZ, m.YY, m.ZZ) {
-			return voxelError(fmt.Sprintf("row %d", i), "no points within the voxel have these sums", nil)
-		}
-		for _, a := range attributes() {
-			if c := *a.column(v); c != nil && c[i] > uint64(m.N)*maxAttribute {
-				return voxelError(fmt.Sprintf("row %d", i), fmt.Sprintf("%s %d is too large for %d points", a.name, c[i], m.N), nil)
-			}
-		}
-	}
-	return checkClasses(v)
-}
-
-// checkClasses checks that class counts are in order and fit their voxels.
-func checkClasses(v *terrain.Voxels) error {
-	var sum int64
-	for i, c := range v.Classes {
-		if i > 0 && v.Classes[i-1].Voxel == c.Voxel {
-			if v.Classes[i-1].Class >= c.Class {
-				return voxelError(fmt.Sprintf("row %d", c.Voxel), "classes are out of order or repeated", nil)
-			}
-		} else {
-			sum = 0
-		}
-		if n := v.Moments[c.Voxel].N; c.N < 1 || c.N > n-sum {
-			return voxelError(fmt.Sprintf("row %d", c.Voxel), fmt.Sprintf("more points in classes than its %d", n), nil)
-		}
-		sum += c.N
-	}
-	return nil
-}
-
-// plausible reports whether n offsets of at most half can have the sum s and
-// the sum of squares ss. With n at most Lattice.MaxPoints nothing overflows.
-func plausible(n, half, s, ss int64) bool {
-	return s >= -n*half && s <= n*half && ss >= 0 && ss <= n*half*half && within(s, n, ss)
-}
-
-// within reports whether x² ≤ a·b, for a and b that are not negative: the
-// inequality of Cauchy and Schwarz, which sums of products obey exactly.
-func within(x, a, b int64) bool {
-	u := uint64(max(x, -x))
-	if x == math.MinInt64 {
-		return false
-	}
-	h1, l1 := bits.Mul64(u, u)
-	h2, l2 := bits.Mul64(uint64(a), uint64(b))
-	return h1 < h2 || h1 == h2 && l1 <= l2
 }

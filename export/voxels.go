@@ -2,6 +2,7 @@ package export
 
 import (
 	"bufio"
+	"bytes"
 	"crypto/sha256"
 	"encoding/hex"
 	"encoding/json"
@@ -9,6 +10,7 @@ import (
 	"hash"
 	"io"
 	"strconv"
+	"strings"
 
 	"github.com/parquet-go/parquet-go"
 	"github.com/parquet-go/parquet-go/compress/zstd"
@@ -29,8 +31,7 @@ const (
 	keyQuanta  = "ledgework.quanta_per_metre" // resolution of all sums
 	keyMeta    = "ledgework.meta"             // VoxelMeta as JSON
 	keyCaution = "ledgework.caution"
-	keyBytes   = "ledgework.data_bytes"  // length of what the sum covers, from the file's start
-	keySum     = "ledgework.data_sha256" // of everything before the footer's indexes
+	keySum     = "ledgework.sha256" // of the whole file with this sum's digits set to 0
 )
 
 // rowGroupRows bounds the memory of writing and reading: a row group of all
@@ -115,14 +116,13 @@ func (a attribute) voxelColumn() voxelColumn {
 
 // The repeated group of class counts, and its two leaves.
 const (
-	classesName   = "classes"
-	className     = "class"
-	classN        = "n"
-	classesPath   = classesName + "." + className
-	classesNPath  = classesName + "." + classN
-	maxClass      = 255
-	maxAttribute  = 65535 // of one point: attributes have 16 bits
-	writtenByName = "ledgework"
+	classesName  = "classes"
+	className    = "class"
+	classN       = "n"
+	classesPath  = classesName + "." + className
+	classesNPath = classesName + "." + classN
+	maxClass     = 255
+	maxAttribute = 65535 // of one point: attributes have 16 bits
 )
 
 // WriteVoxels writes voxels as an Apache Parquet file, compressed by zstd: a
@@ -155,12 +155,11 @@ func writeVoxels(w io.Writer, v *terrain.Voxels, meta VoxelMeta) error {
 		return err
 	}
 	buffered := bufio.NewWriterSize(w, 1<<18)
-	hashed := &hashingWriter{w: buffered, sum: sha256.New()}
+	sealed := &sealingWriter{w: buffered, sum: sha256.New()}
 	schema := parquet.NewSchema("voxels", group)
-	pw := parquet.NewGenericWriter[any](hashed, schema,
+	pw := parquet.NewGenericWriter[any](sealed, schema,
 		parquet.Compression(&zstd.Codec{}),
-		parquet.CreatedBy(writtenByName, voxelFormat, ""),
-		parquet.WriteBufferSize(0), // hashed must see every byte before the sum is taken
+		parquet.CreatedBy(Program, voxelFormat, ""),
 		parquet.DataPageStatistics(false))
 	scratch := make([]parquet.Value, 0, 4096)
 	classes := v.Classes
@@ -185,14 +184,22 @@ func writeVoxels(w io.Writer, v *terrain.Voxels, meta VoxelMeta) error {
 			return err
 		}
 	}
-	pw.SetKeyValueMetadata(keyFormat, voxelFormat)
-	pw.SetKeyValueMetadata(keyEdge, strconv.FormatInt(v.Lattice.Quanta(), 10))
-	pw.SetKeyValueMetadata(keyQuanta, strconv.Itoa(terrain.QuantaPerMetre))
-	pw.SetKeyValueMetadata(keyMeta, string(metaJSON))
-	pw.SetKeyValueMetadata(keyCaution, Caution)
-	pw.SetKeyValueMetadata(keyBytes, strconv.FormatInt(hashed.n, 10))
-	pw.SetKeyValueMetadata(keySum, hex.EncodeToString(hashed.sum.Sum(nil)))
+	for _, kv := range [...][2]string{
+		{keyFormat, voxelFormat},
+		{keyEdge, strconv.FormatInt(v.Lattice.Quanta(), 10)},
+		{keyQuanta, strconv.Itoa(terrain.QuantaPerMetre)},
+		{keyMeta, string(metaJSON)},
+		{keyCaution, Caution},
+		{keySum, unsealed()},
+	} {
+		pw.SetKeyValueMetadata(kv[0], kv[1])
+	}
+	// What follows is small: the indexes of the pages and the footer.
+	sealed.hold = true
 	if err := pw.Close(); err != nil {
+		return err
+	}
+	if err := sealed.seal(); err != nil {
 		return err
 	}
 	return buffered.Flush()
@@ -259,16 +266,52 @@ func joinPath(path []string) string {
 	return s
 }
 
-// A hashingWriter counts and sums what goes through it.
-type hashingWriter struct {
-	w   io.Writer
-	n   int64
-	sum hash.Hash
+// A sealingWriter sums what goes through it. What comes while hold is set is
+// kept until seal.
+type sealingWriter struct {
+	w    io.Writer
+	sum  hash.Hash
+	hold bool
+	held []byte
 }
 
-func (h *hashingWriter) Write(p []byte) (int, error) {
-	n, err := h.w.Write(p)
-	h.sum.Write(p[:n])
-	h.n += int64(n)
+func (s *sealingWriter) Write(p []byte) (int, error) {
+	if s.hold {
+		s.held = append(s.held, p...)
+		return len(p), nil
+	}
+	n, err := s.w.Write(p)
+	s.sum.Write(p[:n])
 	return n, err
+}
+
+// seal puts the sum over all bytes, its own digits set to 0, into its place and
+// writes what was held.
+func (s *sealingWriter) seal() error {
+	at := sealAt(s.held)
+	if at < 0 {
+		panic("export: the Parquet footer has no place for the checksum")
+	}
+	s.sum.Write(s.held)
+	hex.Encode(s.held[at:], s.sum.Sum(nil))
+	_, err := s.w.Write(s.held)
+	return err
+}
+
+// unsealed holds the place of the sum's digits.
+func unsealed() string { return strings.Repeat("0", 2*sha256.Size) }
+
+// sealAt finds the digits of the sum in the raw bytes of a footer, or returns
+// -1. There the key is followed by a field header and the length of the value,
+// a byte each (Apache Thrift compact protocol).
+func sealAt(footer []byte) int {
+	at := bytes.LastIndex(footer, []byte(keySum))
+	if at < 0 {
+		return -1
+	}
+	at += len(keySum) + 2
+	if at+2*sha256.Size > len(footer) || footer[at-1] != 2*sha256.Size {
+		return -1
+	}
+	return at
 }
