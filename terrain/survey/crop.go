@@ -72,7 +72,7 @@ func project(areas orb.MultiPolygon, crs string, frame *Frame) error {
 	if err != nil {
 		return err
 	}
-	t, err := s.transformTo(frame.CRS)
+	t, err := s.transformTo(frame.work)
 	if err != nil {
 		return err
 	}

@@ -9,7 +9,12 @@ import (
 
 // A system is what a frame needs to know of one CRS.
 type system struct {
-	wkt      string // horizontal part, or the whole of a geocentric CRS
+	// crs is the horizontal part, or the whole of a geocentric CRS; nil where
+	// there is none. Parsing one again may take a tenth of a second, so it is
+	// kept, and left to the garbage collector: a Frame has no Close.
+	crs *gdal.CRS
+
+	wkt      string // of crs
 	name     string // of the horizontal part
 	code     string // "EPSG:32633", empty if it has none
 	kind     kind
@@ -36,16 +41,15 @@ func parseSystem(text string) (system, error) {
 	if err != nil {
 		return system{}, err
 	}
-	defer whole.Close()
 	crs := whole
 	if whole.IsCompound() {
 		if crs, err = whole.HorizontalOnly(); err != nil {
 			return system{}, err
 		}
-		defer crs.Close()
+		whole.Close()
 	}
 
-	s := system{wkt: crs.WKT2(), name: crs.Name(), code: crs.AuthorityCode(), heights: whole.VerticalName()}
+	s := system{crs: crs, wkt: crs.WKT2(), name: crs.Name(), code: crs.AuthorityCode(), heights: whole.VerticalName()}
 	_, s.vertical = whole.VerticalUnit()
 	switch {
 	case crs.IsGeocentric():
@@ -65,7 +69,7 @@ func parseSystem(text string) (system, error) {
 		s.heights = ""
 	}
 	if s.kind == local && (s.name == "unnamed" || s.name == "unknown") {
-		s.wkt, s.name = "", "" // lengths in some unit, and that is all
+		s.crs, s.wkt, s.name = nil, "", "" // lengths in some unit, and that is all
 	}
 	s.special = s.kind == projected && strings.Contains(s.wkt, "Pseudo Mercator")
 	return s, nil
@@ -86,19 +90,19 @@ func (k systems) parse(text string) (system, error) {
 	return s, err
 }
 
-// transformTo returns the operation from s to another CRS, given as text.
-func (s system) transformTo(text string) (*gdal.Transform, error) {
-	from, err := gdal.ParseCRS(s.wkt)
-	if err != nil {
-		return nil, err
-	}
-	defer from.Close()
-	to, err := gdal.ParseCRS(text)
+// transformTo returns the operation from s to another CRS.
+func (s system) transformTo(to system) (*gdal.Transform, error) {
+	return gdal.NewTransform(s.crs, to.crs)
+}
+
+// toWGS84 returns the operation from s to longitude and latitude.
+func (s system) toWGS84() (*gdal.Transform, error) {
+	to, err := gdal.ParseCRS(wgs84)
 	if err != nil {
 		return nil, err
 	}
 	defer to.Close()
-	return gdal.NewTransform(from, to)
+	return gdal.NewTransform(s.crs, to)
 }
 
 // metric returns s with horizontal units of one metre, and s itself where it

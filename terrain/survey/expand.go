@@ -66,7 +66,11 @@ func expandOne(base, pattern string) ([]string, error) {
 		return nil, fmt.Errorf("survey: pattern %q: %w", pattern, err)
 	}
 	found := matches[:0]
+	dots := strings.HasPrefix(filepath.Base(pattern), ".")
 	for _, m := range matches {
+		if strings.HasPrefix(filepath.Base(m), ".") && !dots {
+			continue // hidden, as a shell has it
+		}
 		if info, err := os.Stat(m); err == nil && !info.IsDir() && !sidecar(m) {
 			found = append(found, m)
 		}

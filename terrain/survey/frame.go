@@ -51,6 +51,7 @@ type Frame struct {
 	// undone. They belong in front of the user.
 	Notes []string
 
+	work  system // as CRS has it
 	plans map[Source]plan
 }
 
@@ -82,7 +83,7 @@ func (f *Frame) ToWGS84() (*gdal.Transform, error) {
 	if f.Local {
 		return nil, errNoCRS
 	}
-	return system{wkt: f.CRS}.transformTo(wgs84)
+	return f.work.toWGS84()
 }
 
 // wgs84 is the CRS of longitude and latitude.
@@ -107,7 +108,7 @@ func (f *Frame) Transformer(src Source) (*Transformer, error) {
 		return t, nil
 	}
 	var err error
-	t.through, err = p.from.transformTo(f.CRS)
+	t.through, err = p.from.transformTo(f.work)
 	if err != nil {
 		return nil, fmt.Errorf("%s: survey: no way from %q to %q: %w", src.Path, p.from.name, f.Name, err)
 	}

@@ -7,6 +7,7 @@ import (
 	"io/fs"
 	"os"
 	"strconv"
+	"strings"
 
 	"ledgework/terrain"
 	"ledgework/terrain/grid"
@@ -138,14 +139,10 @@ func format(head []byte) (string, error) {
 }
 
 // gridError says what is wrong with a file that no codec knows by its first
-// bytes and that GDAL doesn't open as a grid either.
+// bytes and that GDAL doesn't know as a grid either; other errors of GDAL it
+// returns as they are.
 func gridError(head []byte, err error) error {
-	var bad *terrain.FormatError
-	var not *terrain.UnsupportedError
-	if errors.As(err, &not) {
-		return err
-	}
-	if errors.As(err, &bad) && bad.Place != "open" {
+	if !strings.Contains(err.Error(), "not recognized as a supported file format") {
 		return err
 	}
 	const shown = 12 // bytes: room for every magic that we know
@@ -154,7 +151,6 @@ func gridError(head []byte, err error) error {
 		Place:  "byte 0",
 		Reason: "begins with " + strconv.Quote(string(head[:min(shown, len(head))])) + ", which is no survey format that ledgework reads",
 		Remedy: "give LAS, PLY, text points (XYZ, CSV, PTS) or an elevation grid that GDAL opens",
-		Err:    err,
 	}
 }
 

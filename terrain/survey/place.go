@@ -125,7 +125,7 @@ func middle(probes []*probe) (lon, lat float64, err error) {
 
 // lonLat turns coordinates of a system into degrees, in place.
 func lonLat(s system, x, y, z []float64) error {
-	t, err := s.transformTo(wgs84)
+	t, err := s.toWGS84()
 	if err != nil {
 		return err
 	}

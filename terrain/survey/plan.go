@@ -75,6 +75,7 @@ func choose(probes []*probe, want string) (*Frame, error) {
 	if err != nil {
 		return nil, err
 	}
+	f.work = work
 	f.CRS, f.Name, f.AuthorityCode = work.wkt, work.name, work.code
 	f.Local = work.kind == local
 	if f.Local {

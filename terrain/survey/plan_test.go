@@ -46,7 +46,7 @@ func TestPlanChoosesFrame(t *testing.T) {
 		},
 		{
 			name: "international feet, heights unsaid", crs: "EPSG:2222", lo: [3]float64{700000, 900000, 1000}, hi: [3]float64{701000, 901000, 1100},
-			frame: "NAD83 / Arizona East (ft) in metres",
+			code: "EPSG:26948", frame: "NAD83 / Arizona East (ft) in metres", // PROJ knows its metric twin
 			min:   [3]float64{700000 * 0.3048, 900000 * 0.3048, 304.8}, max: [3]float64{701000 * 0.3048, 901000 * 0.3048, 335.28}, tol: 1e-6, note: "nothing says the unit of its heights",
 		},
 		{
@@ -142,7 +142,7 @@ func TestFeetAgreeWithPROJ(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	through, err := s.transformTo(f.CRS)
+	through, err := s.transformTo(f.work)
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -326,7 +326,7 @@ func TestRealSurveys(t *testing.T) {
 		"seasons/landslide/DEM_of_Difference.asc":  "",
 		"formats/pdal/autzen-utm.las":              "EPSG:26910",
 		"formats/pdal/epsg_4326.las":               "EPSG:32615",
-		"formats/pdal/mvk-thin.las":                "",
+		"formats/pdal/mvk-thin.las":                "EPSG:26995",
 		"formats/laspy/simple.las":                 "",
 		"formats/laspy/simple1_3.las":              "",
 		"formats/laz-perf/1815.las":                "EPSG:6580",
