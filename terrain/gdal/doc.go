@@ -20,7 +20,9 @@
 //
 // # Reach
 //
-// Only local files are opened, and nothing is written beside them. Drivers that
+// Only local files are opened, and nothing is written beside them; a world file
+// or an .aux.xml that stands there is read, for it may hold the georeference.
+// Drivers that
 // are clients of network services are taken away and network file systems
 // refuse, so that a VRT cannot name a host either; PROJ's network grids are off,
 // and so is Python in VRT files.
