@@ -48,7 +48,7 @@ func (b *builder) box(f frame, halfA, loB, hiB, loN, hiN float64) Box {
 		Along:  position(b.site.turn(f.a)),
 		Up:     position(b.site.turn(f.b)),
 		Out:    position(b.site.turn(f.n)),
-		HalfM:  Position{halfA, (hiB - loB) / 2, (hiN - loN) / 2},
+		HalfM:  [3]float64{halfA, (hiB - loB) / 2, (hiN - loN) / 2},
 	}
 }
 

@@ -121,7 +121,7 @@ func (b *builder) ledges() {
 	// flight starts on the riser of the last.
 	y, z := b.ledge("Narrow Step", -4.5, 3.5, -4.5*face, 4.5, 0.5, 5, face)
 	b.ledge("East Step", -4, 3, y-(10-z)*face, 10, 2.2, 6, face)
-	b.ledge("Top Step", 4.8, 11.8, -16.4*face, 16.4, 1.2, 3, face)
+	b.ledge("Top Step", 5, 12, -16.4*face, 16.4, 1.2, 3, face)
 	y, z = b.ledge("Gannet Ledge", 46.5, 56, wallY-8*wall, 8, 1.6, 4, wall)
 	b.ledge("Upper Gannet", 48, 54.5, y-(15-z)*wall, 15, 1.3, 8, wall)
 }

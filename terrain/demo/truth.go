@@ -35,11 +35,11 @@ type Truth struct {
 
 // A Box is a rectangular box in any attitude.
 type Box struct {
-	Centre Position `json:"centre"`
-	Along  Position `json:"along"` // unit vectors
-	Up     Position `json:"up"`
-	Out    Position `json:"out"`
-	HalfM  Position `json:"half_m"` // half sizes along, up and out
+	Centre Position   `json:"centre"`
+	Along  Position   `json:"along"` // unit vectors
+	Up     Position   `json:"up"`
+	Out    Position   `json:"out"`
+	HalfM  [3]float64 `json:"half_m"` // half sizes along, up and out
 }
 
 // Contains reports whether p lies in the box grown by margin metres on every

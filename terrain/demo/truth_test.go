@@ -27,7 +27,7 @@ func TestTruthAsJSON(t *testing.T) {
 func TestBoxContains(t *testing.T) {
 	s, c := sincosDeg(30)
 	b := Box{
-		Centre: Position{10, 20, 30}, HalfM: Position{3, 2, 1},
+		Centre: Position{10, 20, 30}, HalfM: [3]float64{3, 2, 1},
 		Along: Position{c, s, 0}, Up: Position{-s, c, 0}, Out: Position{0, 0, 1},
 	}
 	f := over(&b)
