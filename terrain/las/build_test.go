@@ -199,7 +199,7 @@ func drain(r terrain.Reader, n int) (cloud, error) {
 	b := terrain.NewBatch(n, allColumns)
 	for {
 		if err := r.Read(b); err != nil {
-			if errors.Is(err, io.EOF) && !errors.Is(err, io.ErrUnexpectedEOF) {
+			if errors.Is(err, io.EOF) {
 				return c, nil
 			}
 			return c, err

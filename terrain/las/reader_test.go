@@ -69,7 +69,7 @@ func TestReadColumnMask(t *testing.T) {
 		if cols.Has(terrain.Class) && (batch.Class[49] != want[49].class || batch.Flags[49] != want[49].flags) {
 			t.Errorf("columns %b: got class %d", cols, batch.Class[49])
 		}
-		if err := r.Read(batch); err != io.EOF || batch.Len() != 0 {
+		if err := r.Read(batch); !errors.Is(err, io.EOF) || batch.Len() != 0 {
 			t.Errorf("got %v and %d points at the end", err, batch.Len())
 		}
 	}
@@ -196,7 +196,7 @@ func TestSectionOutside(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if err := s.Read(terrain.NewBatch(4, 0)); err != io.EOF {
+	if err := s.Read(terrain.NewBatch(4, 0)); !errors.Is(err, io.EOF) {
 		t.Errorf("empty section: got %v", err)
 	}
 }
@@ -344,7 +344,7 @@ func benchmarkRead(b *testing.B, cols terrain.Columns) {
 		for err == nil {
 			err = r.Read(batch)
 		}
-		if err != io.EOF {
+		if !errors.Is(err, io.EOF) {
 			b.Fatal(err)
 		}
 	}

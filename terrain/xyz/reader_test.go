@@ -30,7 +30,7 @@ func drain(r terrain.Reader, n int) (cloud, error) {
 	b := terrain.NewBatch(n, allColumns)
 	for {
 		if err := r.Read(b); err != nil {
-			if err == io.EOF {
+			if errors.Is(err, io.EOF) {
 				return c, nil
 			}
 			return c, err
@@ -262,7 +262,7 @@ func BenchmarkRead(b *testing.B) {
 		for err == nil {
 			err = r.Read(batch)
 		}
-		if err != io.EOF {
+		if !errors.Is(err, io.EOF) {
 			b.Fatal(err)
 		}
 	}
