@@ -31,6 +31,7 @@ import (
 // apart and the gaps count as missing, rightly.
 type coverageGrid struct {
 	cell  float64 // edge, m
+	per   float64 // 1/cell
 	half  int     // cells from the centre to the edge of the grid
 	reach float64 // data matter up to this distance from the centre, m
 	disc  [maxCoverageRows]uint64
@@ -41,17 +42,18 @@ type coverageGrid struct {
 const maxCoverageRows = 64
 
 // coverageMargin is how many cells beyond the disc can share a block with it.
-const coverageMargin = 2
+const coverageMargin = 1
 
 // occupancy marks the cells that hold data, one bit each.
 type occupancy [maxCoverageRows]uint64
 
 // newCoverageGrid lays out the grid for a footprint of radius r. Its cells are
-// one spacing wide, or r/30 where that is more. A footprint smaller than a cell
+// one spacing wide, or r/31 where that is more. A footprint smaller than a cell
 // can have a grid without cells.
 func newCoverageGrid(r, spacing float64) coverageGrid {
 	g := coverageGrid{cell: max(spacing, r/(maxCoverageRows/2-coverageMargin))}
-	// The rounding in r/30 must not push the grid over a word.
+	g.per = 1 / g.cell
+	// The rounding in r/31 must not push the grid over a word.
 	g.half = min(int(math.Ceil(r/g.cell))+coverageMargin, maxCoverageRows/2)
 	// The far corner of a cell that is a neighbour, by corners, of one whose
 	// centre is at r.
@@ -71,10 +73,13 @@ func newCoverageGrid(r, spacing float64) coverageGrid {
 
 // mark records data at (a, b) from the centre, in metres.
 func (g *coverageGrid) mark(o *occupancy, a, b float64) {
-	i := int(math.Floor(a/g.cell)) + g.half
-	j := int(math.Floor(b/g.cell)) + g.half
-	if i >= 0 && j >= 0 && i < 2*g.half && j < 2*g.half {
-		o[j] |= 1 << i
+	// Conversion drops the fraction, so it must see no negative number. Within
+	// reach nothing is further out than two cells beyond the grid.
+	const shift = 2
+	i := int(a*g.per+float64(g.half+shift)) - shift
+	j := int(b*g.per+float64(g.half+shift)) - shift
+	if n := uint(2 * g.half); uint(i) < n && uint(j) < n {
+		o[j%maxCoverageRows] |= 1 << (i % maxCoverageRows)
 	}
 }
 

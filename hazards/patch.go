@@ -81,6 +81,8 @@ type judge struct {
 	grid     coverageGrid
 	radius   float64 // of the footprint, m
 	depth    float64 // how far inward of the plane ground belongs to it, m
+
+	tileCells int32 // edge of a tile
 }
 
 func newJudge(s *Surface, planes *fit.LocalPlanes, obstacles []Obstacle, p *Profile) *judge {
@@ -94,39 +96,39 @@ func newJudge(s *Surface, planes *fit.LocalPlanes, obstacles []Obstacle, p *Prof
 		grid:     newCoverageGrid(r, g),
 		radius:   r,
 		depth:    min(r, max(p.StepM.Allowed, p.RoughnessM.Allowed, g)),
+
+		tileCells: max(1, int32(math.Ceil(tileRadii*r/g))),
 	}
 }
 
-// A member is a voxel of a footprint, or just beyond its rim, in the frame of
-// its disc: a and b in the plane, height outward of it.
-type member struct {
-	voxel        int32
-	a, b, height float64
-}
-
-// chunkVoxels is what a worker takes at a time: a few milliseconds of work, so
-// that an interrupt is obeyed at once and no worker ends long before another.
-const chunkVoxels = 512
+// chunkVoxels is how many voxels are judged, or looked at, between two looks at
+// the context.
+const chunkVoxels = 4096
 
 // scores returns the score of the footprint at every voxel.
 func (j *judge) scores(ctx context.Context, workers int) ([]float64, error) {
 	scores := make([]float64, j.voxels.Len())
+	var hopeful []int32
+	for v := range scores {
+		if v%chunkVoxels == 0 && ctx.Err() != nil {
+			return nil, ctx.Err()
+		}
+		if _, ok := j.measurePlane(v); ok {
+			hopeful = append(hopeful, int32(v))
+		}
+	}
+	tiles := j.tiles(hopeful)
 	var next atomic.Int64
 	var wg sync.WaitGroup
 	for range max(1, workers) {
 		wg.Go(func() {
-			var disc []member
+			g := &gathering{j: j}
 			for ctx.Err() == nil {
-				end := int(next.Add(chunkVoxels))
-				start := end - chunkVoxels
-				if start >= len(scores) {
+				t := int(next.Add(1)) - 1
+				if t >= len(tiles) {
 					return
 				}
-				for v := start; v < min(end, len(scores)); v++ {
-					var m measured
-					m, disc = j.measure(v, false, disc)
-					scores[v] = j.criteria.score(&m)
-				}
+				j.scoreTile(ctx, scores, tiles[t], g)
 			}
 		})
 	}
@@ -134,62 +136,62 @@ func (j *judge) scores(ctx context.Context, workers int) ([]float64, error) {
 	return scores, ctx.Err()
 }
 
+// scoreTile fills in the scores of the given voxels of one tile, unless ctx
+// ends. It overwrites voxels.
+func (j *judge) scoreTile(ctx context.Context, scores []float64, voxels []int32, g *gathering) {
+	near := voxels[:0]
+	for _, v := range voxels {
+		if c := j.clearance(j.centre(int(v)), false); j.criteria[clearance].limit.allows(c.value) {
+			near = append(near, v)
+		}
+	}
+	if len(near) == 0 {
+		return
+	}
+	g.load(near)
+	for _, v := range near {
+		if ctx.Err() != nil {
+			return
+		}
+		m, _ := j.measurePlane(int(v))
+		m[clearance] = j.clearance(j.centre(int(v)), false)
+		f := g.footprint(int(v), nil)
+		j.measureFootprint(int(v), &f, &m)
+		scores[v] = j.criteria.score(&m)
+	}
+}
+
 // centre is the foot of voxel v's mean on its plane.
 func (j *judge) centre(v int) r3.Vec {
 	return r3.Sub(j.index.Mean(v), r3.Scale(j.planes.Offset[v], j.planes.Normal[v]))
 }
 
-// measure returns the measures at voxel v, using disc as working space, which
-// it returns for the next call with the members of the disc and its margin.
-//
-// Unless all are wanted, it stops where a cheaper measure is outside its
-// allowed limits and leaves those not taken NaN, which no limit allows; and the
-// clearance is taken only up to its best value.
-func (j *judge) measure(v int, all bool, disc []member) (measured, []member) {
-	var m measured
-	for i := range m {
-		m[i].value = math.NaN()
-	}
+// measurePlane returns the measures that the local plane of voxel v gives:
+// inclination and roughness. It is not ok if there is no plane or one is
+// outside its allowed limits.
+func (j *judge) measurePlane(v int) (m measured, ok bool) {
 	if !j.planes.Fitted(v) {
-		return m, disc
+		return m, false
 	}
-	rejects := func(i int) bool { return !all && !j.criteria[i].limit.allows(m[i].value) }
-
-	n := j.planes.Normal[v]
-	m[inclination] = estimate{fit.InclinationDeg(n), float64(j.planes.SigmaDeg[v])}
-	if rejects(inclination) {
-		return m, disc
-	}
+	m[inclination] = estimate{fit.InclinationDeg(j.planes.Normal[v]), float64(j.planes.SigmaDeg[v])}
 	rough, count := float64(j.planes.Roughness[v]), float64(j.planes.Voxels[v])
 	m[roughness] = estimate{rough, rough / math.Sqrt(2*max(1, count-3))}
-	if rejects(roughness) {
-		return m, disc
-	}
-	c := j.centre(v)
-	m[clearance] = j.clearance(c, all)
-	if rejects(clearance) {
-		return m, disc
-	}
+	return m, j.criteria[inclination].limit.allows(m[inclination].value) &&
+		j.criteria[roughness].limit.allows(m[roughness].value)
+}
 
-	disc = j.disc(disc[:0], c, n)
-	var o occupancy
-	highest, at := 0.0, -1
-	for i := range disc {
-		d := &disc[i]
-		j.grid.mark(&o, d.a, d.b)
-		if d.height > highest && d.a*d.a+d.b*d.b <= j.radius*j.radius {
-			highest, at = d.height, i
-		}
-	}
-	m[coverage] = j.grid.share(&o)
-	position := rough / math.Sqrt(count)
+// measureFootprint adds the measures that the voxels of the disc give, coverage
+// and step, to those of the plane.
+func (j *judge) measureFootprint(v int, f *footprint, m *measured) {
+	m[coverage] = j.grid.share(&f.data)
+	rough := m[roughness].value
+	position := rough / math.Sqrt(float64(j.planes.Voxels[v]))
 	tilt, own := 0.0, 0.0
-	if at >= 0 {
-		tilt = math.Hypot(disc[at].a, disc[at].b) * math.Tan(m[inclination].sigma*math.Pi/180)
-		own = rough / math.Sqrt(float64(j.voxels.Moments[disc[at].voxel].N))
+	if f.highest >= 0 {
+		tilt = f.lateral * math.Tan(m[inclination].sigma*math.Pi/180)
+		own = rough / math.Sqrt(float64(j.voxels.Moments[f.highest].N))
 	}
-	m[step] = estimate{highest, math.Sqrt(position*position + tilt*tilt + own*own)}
-	return m, disc
+	m[step] = estimate{f.stepM, math.Sqrt(position*position + tilt*tilt + own*own)}
 }
 
 // clearance measures that of the disc at c; if exact is false, only up to the
@@ -218,138 +220,6 @@ func frame(n r3.Vec) (u, w r3.Vec) {
 	return u, r3.Cross(n, u)
 }
 
-// disc appends the voxels whose means lie in the slab of the footprint at c
-// with normal n, out to the coverage grid's reach.
-//
-// It walks the rows of cells that meet the box around that cylinder and looks,
-// in each, only at the stretch that the cylinder can hold.
-func (j *judge) disc(dst []member, c, n r3.Vec) []member {
-	u, w := frame(n)
-	l := j.voxels.Lattice
-	g, depth, radius, reach := l.SpacingM(), j.depth, j.radius, j.grid.reach
-	reach2 := reach * reach
-	row := newRowSolver(n, -depth, radius, reach, g)
-	box := func(n float64) (lo, hi float64) {
-		side := reach * math.Sqrt(max(0, 1-n*n))
-		return min(-depth*n, radius*n) - side, max(-depth*n, radius*n) + side
-	}
-	xlo, xhi := box(n.X)
-	ylo, yhi := box(n.Y)
-	zlo, zhi := box(n.Z)
-	low := l.CellOf(r3.Vec{X: c.X + xlo, Y: c.Y + ylo, Z: c.Z + zlo})
-	high := l.CellOf(r3.Vec{X: c.X + xhi, Y: c.Y + yhi, Z: c.Z + zhi})
-	// Cells from low.I on, so that a conversion to integer rounds down.
-	origin, perCell := c.X-float64(low.I)*g, 1/g
-	width := float64(high.I - low.I)
-	for k := low.K; k <= high.K; k++ {
-		z := (float64(k)+0.5)*g - c.Z
-		for jj := low.J; jj <= high.J; jj++ {
-			y := (float64(jj)+0.5)*g - c.Y
-			lo, hi, ok := row.stretch(y, z)
-			if !ok {
-				continue
-			}
-			lo = (origin+lo)*perCell - cellSlack
-			hi = (origin+hi)*perCell + cellSlack
-			if hi < 0 || lo > width+1 {
-				continue
-			}
-			start, end := j.index.Row(jj, k, low.I+int32(max(lo, 0)), low.I+int32(min(hi, width)))
-			for v := start; v < end; v++ {
-				d := r3.Sub(j.index.Mean(v), c)
-				h := r3.Dot(n, d)
-				if h < -depth || h > radius {
-					continue
-				}
-				a, b := r3.Dot(u, d), r3.Dot(w, d)
-				if a*a+b*b <= reach2 {
-					dst = append(dst, member{int32(v), a, b, h})
-				}
-			}
-		}
-	}
-	return dst
-}
-
-// cellSlack, in cells, is far more than the rounding of a coordinate divided by
-// the spacing: 1e9 cells, about as many as an index can count, have a last bit
-// of 1e-7 cells. It can only widen the search.
-const cellSlack = 1e-3
-
-// A rowSolver intersects rows of cells, which run along x, with a cylinder
-// about the origin: within reach of an axis along the unit normal n, and from
-// low to high along it. The cylinder is grown by what a mean can be off its
-// row's axis, so no member is missed.
-type rowSolver struct {
-	n            r3.Vec
-	a, perA      float64 // 1 − nx² and its inverse, 0 where n lies along the row
-	reach2       float64
-	low, high    float64 // of the slab, grown
-	perX         float64 // 1/nx, 0 where the row lies in the plane
-	first, final float64 // low/nx and high/nx in order
-}
-
-// A row is cut only by what it meets at an angle: |nx| and 1 − nx² at least
-// these. Below, dividing would bring in little but rounding, and what is left
-// out hardly narrows the stretch: to neglect a 1 − nx² of 1e-9 moves the distance
-// from the axis by less than the growth of the cylinder for any radius below
-// 10 000 spacings.
-const (
-	minSlant = 1e-6
-	minSkew  = 1e-9
-)
-
-func newRowSolver(n r3.Vec, low, high, reach, spacing float64) rowSolver {
-	half := spacing / 2
-	off := half * (math.Abs(n.Y) + math.Abs(n.Z))
-	reach += half * math.Sqrt2
-	s := rowSolver{n: n, a: 1 - n.X*n.X, reach2: reach * reach, low: low - off, high: high + off}
-	if s.a > minSkew {
-		s.perA = 1 / s.a
-	}
-	if math.Abs(n.X) > minSlant {
-		s.perX = 1 / n.X
-		s.first, s.final = s.low*s.perX, s.high*s.perX
-		if s.first > s.final {
-			s.first, s.final = s.final, s.first
-		}
-	}
-	return s
-}
-
-// stretch returns the x between which the row at (y, z) can meet the cylinder.
-// It is not ok if it meets it nowhere.
-func (s *rowSolver) stretch(y, z float64) (lo, hi float64, ok bool) {
-	// Heights along the row are t + nx·x. Distances from the axis are within
-	// reach where a·x² − 2·nx·t·x + y² + z² − t² ≤ reach².
-	t := s.n.Y*y + s.n.Z*z
-	beyond := y*y + z*z - t*t - s.reach2
-	lo, hi = math.Inf(-1), math.Inf(1)
-	if s.perA != 0 {
-		b := s.n.X * t
-		e := b*b - s.a*beyond
-		if e < 0 {
-			return 0, 0, false
-		}
-		e = math.Sqrt(e) * s.perA
-		lo, hi = b*s.perA-e, b*s.perA+e
-	} else if beyond > 0 {
-		return 0, 0, false
-	}
-	if s.perX != 0 {
-		foot := t * s.perX
-		if first := s.first - foot; first > lo {
-			lo = first
-		}
-		if final := s.final - foot; final < hi {
-			hi = final
-		}
-	} else if t < s.low || t > s.high {
-		return 0, 0, false
-	}
-	return lo, hi, lo <= hi
-}
-
 // patches returns the landing patches at the picked voxels, sorted by id.
 func (j *judge) patches(picked []int32) []Patch {
 	cells := make([]terrain.Cell, len(picked))
@@ -358,9 +228,9 @@ func (j *judge) patches(picked []int32) []Patch {
 	}
 	ids := IDs(patchPrefix, j.voxels.Lattice, cells)
 	patches := make([]Patch, len(picked))
-	var disc []member
+	g := &gathering{j: j}
 	for i, v := range picked {
-		patches[i], disc = j.patch(int(v), disc)
+		patches[i] = j.patch(v, g)
 		patches[i].ID = ids[i]
 	}
 	slices.SortFunc(patches, func(a, b Patch) int { return strings.Compare(a.ID, b.ID) })
@@ -368,21 +238,15 @@ func (j *judge) patches(picked []int32) []Patch {
 }
 
 // patch returns the landing patch at voxel v, but for its id.
-func (j *judge) patch(v int, disc []member) (Patch, []member) {
-	m, disc := j.measure(v, true, disc)
-	var voxels []int32
-	for i := range disc {
-		if d := &disc[i]; d.a*d.a+d.b*d.b <= j.radius*j.radius {
-			voxels = append(voxels, d.voxel)
-		}
-	}
+func (j *judge) patch(v int32, g *gathering) Patch {
+	m, voxels := j.measure(v, g)
 	slices.Sort(voxels)
-	plane := j.plane(v)
+	plane := j.plane(int(v))
 	dip, _ := fit.DipDirectionDeg(plane.Normal)
 	return Patch{
-		Voxel:               int32(v),
+		Voxel:               v,
 		Voxels:              voxels,
-		Centre:              j.centre(v),
+		Centre:              j.centre(int(v)),
 		Plane:               plane,
 		InclinationDeg:      m[inclination].value,
 		InclinationSigmaDeg: m[inclination].sigma,
@@ -398,7 +262,17 @@ func (j *judge) patch(v int, disc []member) (Patch, []member) {
 		Score:               j.criteria.score(&m),
 		Confidence:          j.criteria.confidence(&m),
 		LimitedBy:           j.criteria.limitedBy(&m),
-	}, disc
+	}
+}
+
+// measure returns all measures at voxel v and the voxels of its disc.
+func (j *judge) measure(v int32, g *gathering) (m measured, voxels []int32) {
+	m, _ = j.measurePlane(int(v))
+	m[clearance] = j.clearance(j.centre(int(v)), true)
+	g.load([]int32{v})
+	f := g.footprint(int(v), &voxels)
+	j.measureFootprint(int(v), &f, &m)
+	return m, voxels
 }
 
 // plane returns the local plane of voxel v with its eigenvalues, from the sums

@@ -151,7 +151,7 @@ func TestMeasureKnownFace(t *testing.T) {
 			g := newGround(t, spacing, radius, n, points)
 			j := newJudge(g.surface, g.planes, nil, lenient(radius))
 
-			m, disc := j.measure(g.nearestVoxel(origin), true, nil)
+			m, disc := j.measure(int32(g.nearestVoxel(origin)), &gathering{j: j})
 			near(t, "inclination", m[inclination].value, lean, 5*m[inclination].sigma+0.05)
 			near(t, "roughness", m[roughness].value, noise, 0.03*noise)
 			near(t, "coverage", m[coverage].value, 1, 0)
@@ -165,46 +165,12 @@ func TestMeasureKnownFace(t *testing.T) {
 			}
 
 			u, _ := frame(n)
-			m, _ = j.measure(g.nearestVoxel(r3.Add(origin, r3.Scale(1.75, u))), true, disc)
+			m, _ = j.measure(int32(g.nearestVoxel(r3.Add(origin, r3.Scale(1.75, u)))), &gathering{j: j})
 			// The block lifts the fitted plane by its share of the area and tilts it.
 			near(t, "step of the block", m[step].value, block, 0.02)
 			if m[step].sigma <= 0 || m[step].sigma > 0.025 {
 				t.Errorf("lean %g: step sigma %g", lean, m[step].sigma)
 			}
-		}
-	}
-}
-
-// The row walk must find what a test of every voxel finds.
-func TestDiscAgainstBruteForce(t *testing.T) {
-	rng := rand.New(rand.NewPCG(1, 1))
-	var points []r3.Vec
-	for range 20000 {
-		points = append(points, r3.Vec{X: 3 * rng.Float64(), Y: 3 * rng.Float64(), Z: 3 * rng.Float64()})
-	}
-	g := newGround(t, 0.1, 0.5, r3.Vec{Z: 1}, points)
-	j := newJudge(g.surface, g.planes, nil, lenient(0.5))
-	j.depth = 0.2
-	directions := []r3.Vec{{X: 1}, {Y: 1}, {Z: 1}, {X: -1}, {Y: -1}, {Z: -1}, r3.Unit(r3.Vec{X: 1, Y: 1e-5}), r3.Unit(r3.Vec{X: 1, Y: 1e-3, Z: 1e-3})}
-	for range 50 {
-		directions = append(directions, randomDirection(rng))
-	}
-	for _, n := range directions {
-		c := r3.Vec{X: 3 * rng.Float64(), Y: 3 * rng.Float64(), Z: 3 * rng.Float64()}
-		var got, want []int32
-		for _, m := range j.disc(nil, c, n) {
-			got = append(got, m.voxel)
-		}
-		for v := range g.surface.Voxels.Len() {
-			d := r3.Sub(g.surface.Index.Mean(v), c)
-			h := r3.Dot(d, n)
-			if lateral := r3.Norm(r3.Sub(d, r3.Scale(h, n))); h >= -0.2 && h <= 0.5 && lateral <= j.grid.reach {
-				want = append(want, int32(v))
-			}
-		}
-		slices.Sort(got)
-		if !slices.Equal(got, want) {
-			t.Errorf("normal %v: %d voxels, want %d", n, len(got), len(want))
 		}
 	}
 }
@@ -411,16 +377,4 @@ func benchmarkScores(b *testing.B, name string, spacing float64) {
 func BenchmarkFindPatches(b *testing.B) {
 	b.Run("suspended at 0.06", func(b *testing.B) { benchmarkScores(b, "suspended", 0.06) })
 	b.Run("ledge at 0.05", func(b *testing.B) { benchmarkScores(b, "ledge", 0.05) })
-}
-
-// The judgement of a voxel allocates nothing.
-func TestMeasureAllocatesNothing(t *testing.T) {
-	g, obstacles := rubble(t, 1)
-	p, _ := Example("ledge")
-	j := newJudge(g.surface, g.planes, obstacles, &p)
-	v := g.nearestVoxel(r3.Vec{X: 10, Y: 20, Z: 5})
-	_, disc := j.measure(v, true, nil)
-	if n := testing.AllocsPerRun(100, func() { _, disc = j.measure(v, true, disc) }); n != 0 {
-		t.Errorf("%g allocations", n)
-	}
 }
