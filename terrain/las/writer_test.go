@@ -2,6 +2,7 @@ package las
 
 import (
 	"bytes"
+	"errors"
 	"io"
 	"math"
 	"math/rand/v2"
@@ -178,7 +179,7 @@ func TestWriteRefusesPoints(t *testing.T) {
 		if err == nil || !strings.HasPrefix(err.Error(), c.want) {
 			t.Errorf("got %v, want %q", err, c.want)
 		}
-		if again := w.Close(); again != err {
+		if again := w.Close(); !errors.Is(again, err) {
 			t.Errorf("Close after an error: got %v", again)
 		}
 	}

@@ -21,7 +21,7 @@ func Example() {
 		return
 	}
 	fmt.Println(r.Header().Format, b.X, b.Y, b.Z, b.Intensity)
-	// Output: CSV text [500010.5] [4e+06] [30] [17]
+	// Output: CSV text [500010.5] [4.00002e+06] [30] [17]
 }
 
 // Numbers with decimal commas are refused, with what to do.
