@@ -17,9 +17,9 @@ type Summary struct {
 	Promised  int64      `json:"points_promised"` // by the header, -1 if it doesn't say
 	Points    int64      `json:"points"`          // read
 	NotFinite int64      `json:"points_not_finite"`
-	Min       [3]float64 `json:"min"`         // of the finite points, in the units of the CRS
-	Max       [3]float64 `json:"max"`         // likewise
-	Step      [3]float64 `json:"coordinates"` // resolution of stored coordinates, 0 where unknown
+	Min       [3]float64 `json:"min"`  // of the finite points, in the units of the CRS
+	Max       [3]float64 `json:"max"`  // likewise
+	Step      [3]float64 `json:"step"` // resolution of stored coordinates, 0 where unknown
 
 	CRS     CRSSummary   `json:"crs"`
 	Working FrameSummary `json:"working"`
@@ -117,7 +117,6 @@ func inspect(ctx context.Context, p *probe, r terrain.Reader) (*Summary, error) 
 		Promised: h.Points, Step: h.Step, Cell: h.Cell, Color: h.Columns.Has(terrain.Color),
 		Classes: []ClassCount{}, Returns: []ReturnCount{}, Defects: []terrain.Defect{}, Notes: []string{},
 	}
-	s.Notes = append(s.Notes, h.Notes...)
 	c := newCensus(h)
 	frame, err := choose([]*probe{p}, "auto")
 	if err == nil {
@@ -126,7 +125,7 @@ func inspect(ctx context.Context, p *probe, r terrain.Reader) (*Summary, error) 
 	switch {
 	case err != nil:
 		s.Unusable = err.Error()
-		s.Notes = append(s.Notes, p.notes...)
+		s.Notes = append(s.Notes, gatherNotes([]*probe{p})...)
 	default:
 		defer c.place.Close()
 		c.sample = newSample(frame)

@@ -88,10 +88,10 @@ func TestInspectErrors(t *testing.T) {
 // Sampled blocks give the density of all.
 func TestPlanCellsAreBounded(t *testing.T) {
 	c := planCells{blocks: make(map[[2]int32]block)}
-	b := terrain.NewBatch(2*1500, 0)
-	for i := range 1500 {
-		b.Resize(2 * 1500)
-		for j := range 1500 {
+	b := terrain.NewBatch(2*1100, 0)
+	for i := range 1100 {
+		b.Resize(2 * 1100)
+		for j := range 1100 {
 			x, y := float64(8*i), float64(8*j)
 			b.X[2*j], b.Y[2*j], b.X[2*j+1], b.Y[2*j+1] = x, y, x+0.5, y+0.5
 		}

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 
 	"ledgework/terrain"
 )
@@ -69,7 +70,6 @@ func choose(probes []*probe, want string) (*Frame, error) {
 		if err := p.settle(); err != nil {
 			return nil, err
 		}
-		f.Notes = append(f.Notes, p.notes...)
 	}
 	work, err := f.workingSystem(probes, want)
 	if err != nil {
@@ -90,6 +90,7 @@ func choose(probes []*probe, want string) (*Frame, error) {
 		}
 	}
 	f.checkHeights(probes)
+	f.Notes = append(f.Notes, gatherNotes(probes)...)
 	return f, f.checkPlaces(probes)
 }
 
@@ -164,9 +165,6 @@ func (f *Frame) workingSystem(probes []*probe, want string) (system, error) {
 		return system{}, err
 	}
 	f.note("worked in %s (%s), the zone of the middle of the survey, instead of %s", utm.name, code, s.name)
-	if s.kind == geographic && !keepsDatum(s.code, code) {
-		f.note("the datum of %s was changed to WGS 84 by PROJ's best transformation without grids from the network", s.name)
-	}
 	return utm, nil
 }
 
@@ -193,7 +191,7 @@ func (f *Frame) add(p *probe, work system) error {
 	switch {
 	case s.kind == local && s.wkt == "":
 		if work.kind != local || work.wkt != "" {
-			p.remark("there is no CRS: its coordinates are taken to be in the working CRS %q", work.name)
+			p.note("there is no CRS: its coordinates are taken to be in the working CRS %q", work.name)
 		}
 	case s.kind == local && work.kind != local:
 		return &placeError{p.src.Path, fmt.Sprintf("its coordinate system %q is tied to no place on earth, but other surveys are", s.name),
@@ -225,10 +223,25 @@ func (f *Frame) add(p *probe, work system) error {
 		return fmt.Errorf("%s: survey: its coordinates have no place in %q: %w; check its CRS", p.src.Path, f.Name, err)
 	}
 	f.GridCell = max(f.GridCell, t.cell(p.extent, p.header.Cell))
+	if pl.how != scaled {
+		p.noteAccuracy(t.through.Accuracy())
+	}
 	f.plans[p.src] = pl
 	f.Extent.Union(pl.extent)
 	f.Points += p.points
 	return nil
+}
+
+// noteAccuracy says what changing the datum on the way into the working CRS
+// may cost, where it is more than a good survey is off by itself.
+func (p *probe) noteAccuracy(metres float64, ballpark bool) {
+	const worthSayingM = 0.05
+	switch {
+	case ballpark:
+		p.note("PROJ knows no way between the datum of %q and that of the working CRS here, and takes them for one: positions may be off by metres, in some countries by hundreds", p.system.name)
+	case metres > worthSayingM:
+		p.note("positions were moved to the datum of the working CRS, which is good to %g m", metres)
+	}
 }
 
 // heightUnit is the metres per unit of height of a source.
@@ -237,11 +250,11 @@ func (p *probe) heightUnit() float64 {
 	switch {
 	case s.vertical > 0:
 		if s.vertical != 1 {
-			p.remark("heights were converted to metres (1 unit of %q = %.12g m)", s.heights, s.vertical)
+			p.note("heights were converted to metres (1 unit of %q = %.12g m)", s.heights, s.vertical)
 		}
 		return s.vertical
 	case s.kind == projected && s.unit != 1:
-		p.remark("nothing says the unit of its heights: it is taken to be that of the plan, %s; give a compound crs: EPSG:n+m if it isn't", s.unitName)
+		p.note("nothing says the unit of its heights: it is taken to be that of the plan, %s; give a compound crs: EPSG:n+m if it isn't", s.unitName)
 		return s.unit
 	case s.kind == local && s.unit > 0:
 		return s.unit
@@ -254,7 +267,6 @@ func (p *probe) heightUnit() float64 {
 func (f *Frame) checkHeights(probes []*probe) {
 	var from *probe
 	for _, p := range probes {
-		f.Notes = append(f.Notes, p.later...)
 		switch {
 		case p.system.heights == "":
 		case from == nil:
@@ -268,7 +280,7 @@ func (f *Frame) checkHeights(probes []*probe) {
 
 // checkPlaces refuses extents that can't be a site.
 func (f *Frame) checkPlaces(probes []*probe) error {
-	for i, p := range probes {
+	for _, p := range probes {
 		e := f.plans[p.src].extent
 		for a, axis := range [3]string{"east", "north", "up"} {
 			if w := e.Max[a] - e.Min[a]; !(w <= maxSpanM) {
@@ -276,16 +288,43 @@ func (f *Frame) checkPlaces(probes []*probe) error {
 					"remove stray points, or give its right crs: EPSG:n"}
 			}
 		}
-		for _, q := range probes[:i] {
-			o := f.plans[q.src].extent
-			gap := math.Hypot(gapOf(e, o, 0), gapOf(e, o, 1))
-			if size := max(sizeOf(e), sizeOf(o)); gap > minGapM && gap > minApart*size {
-				return &placeError{p.src.Path, fmt.Sprintf("it lies %.4g km away from %s", gap/1000, q.src.Path),
-					"surveys of one worksite must be of one place: check the crs of both"}
+	}
+
+	// Tiles of a long corridor hang together though its ends are far apart:
+	// what counts is whether every file can be reached from the first.
+	reached := []*probe{probes[0]}
+	rest := slices.Clone(probes[1:])
+	for i := 0; i < len(reached); i++ {
+		rest = slices.DeleteFunc(rest, func(p *probe) bool {
+			if f.apart(reached[i], p) > 0 {
+				return false
 			}
+			reached = append(reached, p)
+			return true
+		})
+	}
+	if len(rest) == 0 {
+		return nil
+	}
+	lost, near := rest[0], reached[0]
+	for _, p := range reached {
+		if f.apart(p, lost) < f.apart(near, lost) {
+			near = p
 		}
 	}
-	return nil
+	return &placeError{lost.src.Path, fmt.Sprintf("it lies %.4g km away from %s", f.apart(near, lost)/1000, near.src.Path),
+		"surveys of one worksite must be of one place: check the crs of both"}
+}
+
+// apart is the distance between two sources in different places, 0 if they
+// may be of one site.
+func (f *Frame) apart(p, q *probe) float64 {
+	e, o := f.plans[p.src].extent, f.plans[q.src].extent
+	gap := math.Hypot(gapOf(e, o, 0), gapOf(e, o, 1))
+	if gap > minGapM && gap > minApart*max(sizeOf(e), sizeOf(o)) {
+		return gap
+	}
+	return 0
 }
 
 // gapOf is the distance between two boxes along an axis, 0 where they overlap.

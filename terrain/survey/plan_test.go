@@ -47,7 +47,7 @@ func TestPlanChoosesFrame(t *testing.T) {
 		{
 			name: "international feet, heights unsaid", crs: "EPSG:2222", lo: [3]float64{700000, 900000, 1000}, hi: [3]float64{701000, 901000, 1100},
 			code: "EPSG:26948", frame: "NAD83 / Arizona East (ft) in metres", // PROJ knows its metric twin
-			min:   [3]float64{700000 * 0.3048, 900000 * 0.3048, 304.8}, max: [3]float64{701000 * 0.3048, 901000 * 0.3048, 335.28}, tol: 1e-6, note: "nothing says the unit of its heights",
+			min: [3]float64{700000 * 0.3048, 900000 * 0.3048, 304.8}, max: [3]float64{701000 * 0.3048, 901000 * 0.3048, 335.28}, tol: 1e-6, note: "nothing says the unit of its heights",
 		},
 		{
 			name: "degrees north", crs: "EPSG:4326", cell: 1.0 / 1200, lo: [3]float64{10.6, 46.7, 1000}, hi: [3]float64{10.9, 46.9, 3700},
@@ -229,7 +229,7 @@ func TestPlanOfSeveral(t *testing.T) {
 		t.Errorf("frame %s %s", f.AuthorityCode, f.Name)
 	}
 	notes := strings.Join(f.Notes, "\n")
-	for _, want := range []string{"bare.xyz: there is no CRS", "nonsense: the file's CRS can't be understood"} {
+	for _, want := range []string{"bare.xyz and another file: there is no CRS", "nonsense: the file's CRS can't be understood"} {
 		if !strings.Contains(notes, want) {
 			t.Errorf("notes lack %q:\n%s", want, notes)
 		}
@@ -249,6 +249,43 @@ func TestPlanOfSeveral(t *testing.T) {
 	}
 	if _, err := f.Transformer(Source{Path: "other"}); err == nil {
 		t.Error("a transformer for a file the frame doesn't know")
+	}
+}
+
+// Tiles of 100 m along 40 km are one site: each is near another.
+func TestPlanOfLongCorridor(t *testing.T) {
+	readers := make(map[string]*fakeReader)
+	var order []string
+	for i := range 10 {
+		name := string(rune('a' + i))
+		e := 500000 + 4500*float64(i*7%10) // not in order
+		readers[name] = boxReader("EPSG:32633", 0, [3]float64{e, 5000000, 0}, [3]float64{e + 100, 5000100, 50})
+		readers[name].header.Notes = []string{"an oddity"}
+		order = append(order, name)
+	}
+	f, err := planFakes("", readers, order...)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if w := f.Extent.Max[0] - f.Extent.Min[0]; w != 40600 {
+		t.Errorf("%g m wide", w)
+	}
+	if len(f.Notes) != 1 || f.Notes[0] != "a and 9 other files: an oddity" {
+		t.Errorf("notes %q", f.Notes)
+	}
+}
+
+func TestPlanNotesDatumChange(t *testing.T) {
+	f, err := planFakes("EPSG:32610", map[string]*fakeReader{"a": boxReader("EPSG:26710", 0, [3]float64{560000, 5110000, 700}, [3]float64{561000, 5111000, 2500})}, "a")
+	if err != nil {
+		t.Fatal(err)
+	}
+	if notes := strings.Join(f.Notes, "\n"); !strings.Contains(notes, "datum of the working CRS, which is good to") {
+		t.Errorf("notes %q", f.Notes)
+	}
+	// NAD27 lies about 100 m west and 200 m south of WGS 84 in Washington.
+	if de, dn := f.Extent.Min[0]-560000, f.Extent.Min[1]-5110000; de > -80 || de < -120 || dn < 180 || dn > 230 {
+		t.Errorf("moved by %g east, %g north", de, dn)
 	}
 }
 

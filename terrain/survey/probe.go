@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 
 	"ledgework/terrain"
 )
@@ -17,8 +18,7 @@ type probe struct {
 	system system // of kind local where the source has no CRS
 	extent terrain.Extent
 	points int64
-	notes  []string // for the user, in order
-	later  []string // the same, of what conversion does
+	notes  []string // for the user, without the path
 }
 
 // look opens a source for its header. Where the header tells no extent, or one
@@ -71,8 +71,35 @@ func examine(ctx context.Context, src Source, r terrain.Reader, known systems) (
 	return p, nil
 }
 
+// note adds a note on the source.
 func (p *probe) note(format string, args ...any) {
-	p.notes = append(p.notes, p.src.Path+": "+fmt.Sprintf(format, args...))
+	p.notes = append(p.notes, fmt.Sprintf(format, args...))
+}
+
+// gatherNotes lists the notes on all sources, and the oddities of their
+// headers. What is said of many files is said once.
+func gatherNotes(probes []*probe) []string {
+	var texts []string
+	files := make(map[string][]string)
+	for _, p := range probes {
+		for _, text := range slices.Concat(p.header.Notes, p.notes) {
+			if files[text] == nil {
+				texts = append(texts, text)
+			}
+			files[text] = append(files[text], p.src.Path)
+		}
+	}
+	for i, text := range texts {
+		who := files[text][0]
+		switch n := len(files[text]) - 1; {
+		case n == 1:
+			who += " and another file"
+		case n > 1:
+			who += fmt.Sprintf(" and %d other files", n)
+		}
+		texts[i] = who + ": " + text
+	}
+	return texts
 }
 
 // maxRawSpan bounds a header's extent before its units are known: 1000 km in
@@ -141,9 +168,4 @@ func measure(ctx context.Context, r terrain.Reader, b *terrain.Batch) (terrain.E
 // number and itself is zero, of anything else NaN.
 func finite(x, y, z float64) bool {
 	return (x-x)+(y-y)+(z-z) == 0
-}
-
-// remark is note for what is only done if the plan comes off.
-func (p *probe) remark(format string, args ...any) {
-	p.later = append(p.later, p.src.Path+": "+fmt.Sprintf(format, args...))
 }

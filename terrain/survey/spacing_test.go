@@ -104,10 +104,10 @@ func TestMedianSpacingSurvivesSampling(t *testing.T) {
 		n    int // points a side
 		pos  func(u, v float64) [3]float64
 	}{
-		{"flat", 1200, func(u, v float64) [3]float64 { return [3]float64{u, v, 0} }},
-		{"wall facing east", 1200, func(u, v float64) [3]float64 { return [3]float64{7, u, v} }},
+		{"flat", 700, func(u, v float64) [3]float64 { return [3]float64{u, v, 0} }},
+		{"wall facing east", 700, func(u, v float64) [3]float64 { return [3]float64{7, u, v} }},
 		// A corridor of 1 % of its box: the mean spacing is wrong tenfold.
-		{"two strips far apart", 1000, func(u, v float64) [3]float64 {
+		{"two strips far apart", 700, func(u, v float64) [3]float64 {
 			if u > 0.05 {
 				return [3]float64{u + 50, v + 50, 0}
 			}

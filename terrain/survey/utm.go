@@ -3,7 +3,6 @@ package survey
 import (
 	"fmt"
 	"math"
-	"strings"
 )
 
 // utmFor returns the EPSG code of the UTM zone, or beyond its limits the polar
@@ -57,13 +56,4 @@ func utmZone(lon, lat float64) int {
 		}
 	}
 	return zone
-}
-
-// keepsDatum reports whether the CRS utmFor chose is on the datum of from.
-func keepsDatum(from, utm string) bool {
-	switch from {
-	case "EPSG:4326", "EPSG:4979", "EPSG:4978":
-		return true
-	}
-	return !strings.HasPrefix(utm, "EPSG:326") && !strings.HasPrefix(utm, "EPSG:327") && !strings.HasPrefix(utm, "EPSG:504")
 }
