@@ -13,6 +13,9 @@ import (
 // fall out of the cache.
 const tileRadii = 2
 
+// maxTileCells keeps the cells of a tile and its halo well within int32.
+const maxTileCells = 1 << 20
+
 // tiles groups voxels by tile, both in the order of the voxels. A tile is a cube
 // of cells whose place on the lattice does not depend on what else there is.
 func (j *judge) tiles(voxels []int32) [][]int32 {

@@ -97,7 +97,7 @@ func newJudge(s *Surface, planes *fit.LocalPlanes, obstacles []Obstacle, p *Prof
 		radius:   r,
 		depth:    min(r, max(p.StepM.Allowed, p.RoughnessM.Allowed, g)),
 
-		tileCells: max(1, int32(math.Ceil(tileRadii*r/g))),
+		tileCells: int32(min(max(1, math.Ceil(tileRadii*r/g)), maxTileCells)),
 	}
 }
 
@@ -276,7 +276,8 @@ func (j *judge) measure(v int32, g *gathering) (m measured, voxels []int32) {
 }
 
 // plane returns the local plane of voxel v with its eigenvalues, from the sums
-// of its voxels. Its normal is that of j.planes, which is oriented.
+// of its voxels. Its normal is that of j.planes, which is oriented and may come
+// from a coarser level.
 func (j *judge) plane(v int) fit.Plane {
 	members := j.index.Within(nil, j.index.Mean(v), j.radius)
 	edge, home := j.voxels.Lattice.Quanta(), j.voxels.Cells[v]

@@ -293,7 +293,15 @@ func TestPatchesWithinLimits(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	j := newJudge(g.surface, g.planes, obstacles, &p)
+	scores, err := j.scores(context.Background(), 1)
+	if err != nil {
+		t.Fatal(err)
+	}
 	for _, q := range patches {
+		if q.Score != scores[q.Voxel] {
+			t.Errorf("%s: score %g, picked for %g", q.ID, q.Score, scores[q.Voxel])
+		}
 		if !(q.Score > 0 && q.Score <= 1 && q.Confidence >= 0 && q.Confidence <= 1) {
 			t.Errorf("%s: score %g, confidence %g", q.ID, q.Score, q.Confidence)
 		}
