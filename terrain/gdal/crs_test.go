@@ -160,3 +160,20 @@ func FuzzParseCRS(f *testing.F) {
 		}
 	})
 }
+
+// A definition comes out of a survey file: it must not exhaust the C stack.
+func TestParseCRSDeep(t *testing.T) {
+	const n = 1 << 20
+	for _, s := range []string{
+		strings.Repeat("A[", n),
+		strings.Repeat(`{"a":`, n),
+		"{" + strings.Repeat(`"a":[`, 1) + strings.Repeat("[", n),
+		"+proj=pipeline" + strings.Repeat(" +step +proj=pipeline", n/64),
+		"PROJCS[" + strings.Repeat(`"x",`, n) + "]",
+	} {
+		if c, err := ParseCRS(s); err == nil {
+			c.Close()
+			t.Errorf("%q is %q", abridge(s), c.Name())
+		}
+	}
+}

@@ -110,3 +110,22 @@ func TestAreas(t *testing.T) {
 		t.Errorf("made valid: %g, want the two triangles' 2", got)
 	}
 }
+
+func FuzzGeometry(f *testing.F) {
+	f.Add(square(0, 0, 1))
+	f.Add(bowtie())
+	f.Add(multiWKB(square(0, 0, 2), square(1, 1, 2)))
+	f.Fuzz(func(t *testing.T, wkb []byte) {
+		if len(wkb) > 2000 {
+			t.Skip()
+		}
+		ok, reason, err := ValidWKB(wkb)
+		if ok && (reason != "" || err != nil) || err != nil && err.Error() == "" {
+			t.Fatalf("%t, %q, %v", ok, reason, err)
+		}
+		area, err := Area(wkb)
+		if ok && (err != nil || area < 0) {
+			t.Errorf("a valid geometry of area %g (%v)", area, err)
+		}
+	})
+}
