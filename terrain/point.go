@@ -207,9 +207,9 @@ func (e *Extent) Union(o Extent) {
 // A Defect is a kind of damage that a reader passed over, with the number of
 // times and the first place.
 type Defect struct {
-	Reason string // what was wrong: "coordinate is not finite"
-	Count  int64
-	First  string // the first place: "point 1204 at byte 98312"
+	Reason string `json:"reason"` // what was wrong: "coordinate is not finite"
+	Count  int64  `json:"count"`
+	First  string `json:"first"` // the first place: "point 1204 at byte 98312"
 }
 
 // A FormatError says that a file's bytes break its format.

@@ -88,8 +88,12 @@ func decimal(m float64, k int) float64 {
 	return m * math.Pow10(k)
 }
 
-// A place is a point of a sample with the cube it lies in.
+// A place is a point of a sample.
 type place struct{ x, y, z float64 }
+
+func (p place) compare(q place) int {
+	return cmp.Or(cmp.Compare(p.x, q.x), cmp.Compare(p.y, q.y), cmp.Compare(p.z, q.z))
+}
 
 // A sample keeps the points of selected cubes.
 type sample struct {
@@ -223,34 +227,44 @@ func (s *sample) median() float64 {
 	return all[(len(all)-1)/2]
 }
 
-// nearest returns the distance to the nearest other place for every point that
-// is an eighth of edge away from the faces of its cube.
+// nearest returns the distance to the nearest other place in the same cube for
+// every point that is an eighth of edge away from the cube's faces.
 func (s *sample) nearest(edge float64) []float64 {
 	axis := s.widest()
 	at := func(p place) float64 { return [3]float64{p.x, p.y, p.z}[axis] }
+	cube := func(p place) place {
+		return place{math.Floor(p.x / edge), math.Floor(p.y / edge), math.Floor(p.z / edge)}
+	}
 	slices.SortFunc(s.points, func(a, b place) int {
-		return cmp.Or(cmp.Compare(at(a), at(b)), cmp.Compare(a.x, b.x), cmp.Compare(a.y, b.y), cmp.Compare(a.z, b.z))
+		return cmp.Or(cube(a).compare(cube(b)), cmp.Compare(at(a), at(b)), a.compare(b))
 	})
-	points := slices.Compact(s.points)
-	s.points = points
+	s.points = slices.Compact(s.points)
 	var all []float64
-	for i, p := range points {
-		if !inner(p, edge) {
-			continue
+	for first := 0; first < len(s.points); {
+		last, in := first+1, cube(s.points[first])
+		for last < len(s.points) && cube(s.points[last]) == in {
+			last++
 		}
-		best := math.Inf(1)
-		for _, step := range [2]int{-1, 1} {
-			for j := i + step; j >= 0 && j < len(points); j += step {
-				q := points[j]
-				if d := at(q) - at(p); d*d >= best {
-					break
-				}
-				dx, dy, dz := q.x-p.x, q.y-p.y, q.z-p.z
-				best = min(best, dx*dx+dy*dy+dz*dz)
+		points := s.points[first:last]
+		first = last
+		for i, p := range points {
+			if !inner(p, edge) {
+				continue
 			}
-		}
-		if !math.IsInf(best, 1) {
-			all = append(all, math.Sqrt(best))
+			best := math.Inf(1)
+			for _, step := range [2]int{-1, 1} {
+				for j := i + step; j >= 0 && j < len(points); j += step {
+					q := points[j]
+					if d := at(q) - at(p); d*d >= best {
+						break
+					}
+					dx, dy, dz := q.x-p.x, q.y-p.y, q.z-p.z
+					best = min(best, dx*dx+dy*dy+dz*dz)
+				}
+			}
+			if !math.IsInf(best, 1) {
+				all = append(all, math.Sqrt(best))
+			}
 		}
 	}
 	return all

@@ -138,8 +138,8 @@ type unit struct {
 }
 
 // unitPoints is the size of a unit: small enough that workers finish nearly
-// together (1/30 s each), large enough that opening the file again is nothing.
-const unitPoints = 1 << 20
+// together (5 ms each), large enough that opening the file again is nothing.
+const unitPoints = 1 << 18
 
 // minRecordBytes is the size of the shortest LAS point record.
 const minRecordBytes = 20
