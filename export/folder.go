@@ -109,11 +109,11 @@ func (f *Folder) Write(name string, write func(io.Writer) error) error {
 	}
 	path := filepath.Join(f.temp, filepath.FromSlash(name))
 	if err := os.MkdirAll(filepath.Dir(path), 0o777); err != nil {
-		return fmt.Errorf("export: %w", full(err, name))
+		return fmt.Errorf("%s: %w", name, full(err, f.target))
 	}
 	file, err := os.OpenFile(path, os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o666)
 	if err != nil {
-		return fmt.Errorf("export: %w", full(err, name))
+		return fmt.Errorf("%s: %w", name, full(err, f.target))
 	}
 	sum := sha256.New()
 	buffered := bufio.NewWriterSize(io.MultiWriter(file, sum), 1<<18)
@@ -126,7 +126,7 @@ func (f *Folder) Write(name string, write func(io.Writer) error) error {
 	}
 	info, statErr := file.Stat()
 	if err = errors.Join(err, statErr, file.Close()); err != nil {
-		return errors.Join(fmt.Errorf("export: %s: %w", name, full(err, name)), os.Remove(path))
+		return errors.Join(fmt.Errorf("%s: %w", name, full(err, f.target)), os.Remove(path))
 	}
 	f.outputs = append(f.outputs, Output{File: name, SHA256: hex.EncodeToString(sum.Sum(nil)), Bytes: info.Size()})
 	return nil
@@ -146,21 +146,9 @@ func (f *Folder) Commit() error {
 	if err := checkTarget(f.target, f.overwrite); err != nil {
 		return err
 	}
-	old := ""
-	if _, err := os.Lstat(f.target); err == nil {
-		old = f.temp + ".old"
-		if err := os.Rename(f.target, old); err != nil {
-			return fmt.Errorf("export: run folder %s: cannot move the old one aside: %w", f.target, err)
-		}
-	}
-	if err := os.Rename(f.temp, f.target); err != nil {
-		err = fmt.Errorf("export: run folder %s: %w", f.target, err)
-		if old != "" {
-			if back := os.Rename(old, f.target); back != nil {
-				err = fmt.Errorf("%w; the old one is now %s: %w", err, old, back)
-			}
-		}
-		return err
+	old, err := replace(f.target, f.temp)
+	if err != nil {
+		return fmt.Errorf("export: run folder %s: %w", f.target, err)
 	}
 	f.temp = ""
 	if err := syncDir(filepath.Dir(f.target)); err != nil {
@@ -172,6 +160,24 @@ func (f *Folder) Commit() error {
 		}
 	}
 	return nil
+}
+
+// replace gives the folder temp the name target. What stood there has the name
+// old afterwards, or its own again after an error.
+func replace(target, temp string) (old string, err error) {
+	if _, err := os.Lstat(target); err == nil {
+		old = temp + ".old"
+		if err := os.Rename(target, old); err != nil {
+			return "", fmt.Errorf("cannot move the old one aside: %w", err)
+		}
+	}
+	err = os.Rename(temp, target)
+	if err != nil && old != "" {
+		if back := os.Rename(old, target); back != nil {
+			return "", fmt.Errorf("%w; the old one is now %s: %w", err, old, back)
+		}
+	}
+	return old, err
 }
 
 // Discard deletes the unfinished folder. After Commit it does nothing, so that
@@ -189,9 +195,9 @@ func (f *Folder) Discard() error {
 }
 
 // full says "disk full" where that is the reason.
-func full(err error, what string) error {
+func full(err error, where string) error {
 	if errors.Is(err, syscall.ENOSPC) || errors.Is(err, syscall.EDQUOT) {
-		return fmt.Errorf("disk full while writing %s: %w", what, err)
+		return fmt.Errorf("disk full while writing %s; free some space or choose another place with -o: %w", where, err)
 	}
 	return err
 }

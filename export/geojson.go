@@ -8,6 +8,8 @@ import (
 	"io"
 	"math"
 	"strconv"
+
+	"ledgework/terrain/gdal"
 )
 
 // lonLatDecimals and heightDecimals are the digits of written positions.
@@ -21,15 +23,15 @@ const (
 // rings counter-clockwise, a bounding box for each feature and for all, cut at
 // the antimeridian. Each geometry is a MultiPolygon that passed valid.
 //
-// An outline that the projection makes invalid is written with more vertices,
-// or as its convex hull; the warnings say so. An error leaves a partial
-// document.
+// An outline that projection and rounding make invalid is written with more
+// vertices, then repaired by GEOS if that keeps its area, and at last replaced
+// by its convex hull, which a warning says. An error leaves a partial document.
 func WriteGeoJSON(w io.Writer, t *Table, p Projector, valid ValidityCheck) (warnings []string, err error) {
 	if p == nil {
 		return nil, ErrNoCRS
 	}
 	if valid == nil {
-		return nil, errors.New("export: no check of validity was given")
+		valid = gdal.ValidWKB
 	}
 	out := bufio.NewWriterSize(w, 1<<16)
 	e := &geoJSON{w: out}
@@ -66,34 +68,32 @@ func WriteGeoJSON(w io.Writer, t *Table, p Projector, valid ValidityCheck) (warn
 
 // globe is the geometry of feature i, valid as written.
 func (t *Table) globe(i int, p Projector, valid ValidityCheck) (g globe, warning string, err error) {
-	attempts := []struct {
-		shape   func() shape
-		warning string
-	}{
-		{func() shape { return t.shape(i, false) }, ""},
-		{func() shape { return t.shape(i, true) }, ""},
-		{func() shape { return hull(t.shape(i, true)) }, "its outline is not valid in longitude and latitude and was replaced by its convex hull"},
-	}
-	var reason string
-	for _, a := range attempts {
-		g, err = toGlobe(a.shape(), p)
-		if err != nil {
+	for _, dense := range [2]bool{false, true} {
+		if g, err = toGlobe(t.shape(i, dense), p); err != nil {
 			return globe{}, "", err
 		}
-		var ok bool
-		ok, why, err := g.check(valid)
-		if err != nil {
-			return globe{}, "", fmt.Errorf("validity: %w", err)
+		if ok, _, err := g.check(valid); ok || err != nil {
+			return g, "", err
 		}
-		if ok {
-			if a.warning != "" {
-				warning = a.warning + " (" + reason + ")"
-			}
-			return g, warning, nil
-		}
-		reason = why
 	}
-	return globe{}, "", fmt.Errorf("no valid outline in longitude and latitude: %s", reason)
+	if r, same, err := g.repaired(); err != nil {
+		return globe{}, "", err
+	} else if same {
+		if ok, _, err := r.check(valid); ok || err != nil {
+			return r, "", err
+		}
+	}
+	if g, err = toGlobe(hull(t.shape(i, true)), p); err != nil {
+		return globe{}, "", err
+	}
+	ok, reason, err := g.check(valid)
+	if err != nil {
+		return globe{}, "", err
+	}
+	if !ok {
+		return globe{}, "", fmt.Errorf("no valid outline in longitude and latitude: %s", reason)
+	}
+	return g, "its outline is not valid in longitude and latitude and was replaced by its convex hull", nil
 }
 
 // geoJSON appends tokens to a buffer that goes to w feature by feature.

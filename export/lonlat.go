@@ -8,6 +8,9 @@ import (
 	"github.com/paulmach/orb"
 	"github.com/paulmach/orb/clip/smartclip"
 	"github.com/paulmach/orb/encoding/wkb"
+	"github.com/paulmach/orb/planar"
+
+	"ledgework/terrain/gdal"
 )
 
 // lonLatPerDegree is the resolution of written longitudes and latitudes: 9
@@ -256,4 +259,66 @@ func (g *globe) check(valid ValidityCheck) (ok bool, reason string, err error) {
 		return false, "", err
 	}
 	return valid(b)
+}
+
+// maxAreaChange is the relative change of area up to which a repaired outline
+// counts as the same. Splitting moves no corner, so the change is rounding: an
+// ulp of a longitude near 180 is 6e-7 of the smallest cell, 5 mm.
+const maxAreaChange = 1e-6
+
+// repaired is g made valid by GEOS: what touches itself after the cut at the
+// antimeridian is split. It is not ok if the area changes.
+func (g *globe) repaired() (out globe, ok bool, err error) {
+	if len(g.polygons) == 0 {
+		return globe{}, false, nil
+	}
+	b, err := wkb.Marshal(g.polygons)
+	if err != nil {
+		return globe{}, false, err
+	}
+	if b, err = gdal.MakeValid(b); err != nil {
+		return globe{}, false, err
+	}
+	geometry, err := wkb.Unmarshal(b)
+	if err != nil {
+		return globe{}, false, err
+	}
+	at := make(map[orb.Point]float64)
+	var outer orb.Ring
+	var outerHeights []float64
+	for i, polygon := range g.polygons {
+		outer, outerHeights = append(outer, polygon[0]...), append(outerHeights, g.heights[i][0]...)
+		for j, r := range polygon {
+			for k, p := range r {
+				at[p] = g.heights[i][j][k]
+			}
+		}
+	}
+	out = globe{box: g.box}
+	for _, polygon := range polygonsOf(geometry) {
+		heights := heightsOf(polygon, at, outer, outerHeights)
+		for i, r := range polygon {
+			direct(r, heights[i], i == 0)
+		}
+		out.append(polygon, heights, 0)
+	}
+	before, after := planar.Area(g.polygons), planar.Area(out.polygons)
+	return out, math.Abs(after-before) <= maxAreaChange*before, nil
+}
+
+// polygonsOf are the polygons in a geometry; lines and points are left out.
+func polygonsOf(g orb.Geometry) orb.MultiPolygon {
+	switch g := g.(type) {
+	case orb.Polygon:
+		return orb.MultiPolygon{g}
+	case orb.MultiPolygon:
+		return g
+	case orb.Collection:
+		var out orb.MultiPolygon
+		for _, part := range g {
+			out = append(out, polygonsOf(part)...)
+		}
+		return out
+	}
+	return nil
 }

@@ -51,5 +51,5 @@ type Projector interface {
 }
 
 // A ValidityCheck says whether a geometry in well-known binary is valid by the
-// OGC Simple Features rules, and why not.
+// OGC Simple Features rules, and why not. Nil asks GEOS through GDAL.
 type ValidityCheck func(wkb []byte) (ok bool, reason string, err error)

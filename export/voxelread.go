@@ -105,7 +105,7 @@ func checkSeal(r io.ReaderAt, size int64) error {
 	want := string(footer[at : at+2*sha256.Size])
 	copy(footer[at:], unsealed())
 	sum := sha256.New()
-	if _, err := io.CopyBuffer(sum, io.NewSectionReader(r, 0, size-n-tail), make([]byte, 1<<20)); err != nil {
+	if _, err := io.CopyBuffer(sum, io.NewSectionReader(r, 0, size-n-tail), make([]byte, 1<<16)); err != nil {
 		return fmt.Errorf("export: %s: %w", VoxelsName, err)
 	}
 	sum.Write(footer)
