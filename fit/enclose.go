@@ -38,9 +38,11 @@ type Gap struct {
 // The method is Khachiyan's with the away steps of Todd & Yıldırım 2007 (doi
 // 10.1016/j.dam.2007.02.013) from the start of Kumar & Yıldırım 2005, dropping
 // points that cannot touch the result by the bound of Harman & Pronzato 2007
-// (doi 10.1016/j.spl.2006.05.014). Points are standardised along their
-// principal axes before, so neither large coordinates nor thin sets lose
-// digits. If rounding or the limit of 100 000 steps stops it early, Gap says
+// (doi 10.1016/j.spl.2006.05.014). Sets that are hard for it, with many points
+// almost on the ellipsoid, are finished by Newton's method on the weights.
+// Points are standardised along their principal axes before, so neither large
+// coordinates nor thin sets lose digits. If rounding stops it early, as for a
+// set thinner than a thousand times the last digit of its coordinates, Gap says
 // what was reached.
 func Enclose(points []r3.Vec, minSemiAxisM, gap float64) (Ellipsoid, Gap, error) {
 	if err := checkEnclose(points, minSemiAxisM, gap); err != nil {

@@ -30,8 +30,7 @@ const (
 	// turns the free centre into a fixed one.
 	liftedDim = 4
 
-	// maxEncloseSteps stops a solver that rounding keeps from its goal; sets
-	// of thousands of points need a few thousand steps to 1e-9.
+	// maxEncloseSteps stops a solver that rounding keeps from its goal.
 	maxEncloseSteps = 100000
 
 	// refreshSteps is the number of steps after which the sums are formed anew
@@ -61,6 +60,8 @@ func (s *solver) solve(gap float64) int {
 				return step
 			}
 			s.active = len(s.points)
+		case step%polishSteps == polishSteps-1:
+			s.polish(goal)
 		case step%refreshSteps == refreshSteps-1:
 			s.drop(far.form) // moves points, so that far and near are void
 		case far.form-3 >= 3-near.form:
