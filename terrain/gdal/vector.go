@@ -157,7 +157,7 @@ func ReadPolygons(path string) (wkb [][]byte, crs string, err error) {
 	if err != nil {
 		return nil, "", err
 	}
-	defer d.Close()
+	defer func() { _ = d.Close() }() // nothing was written
 	layers, err := d.Layers()
 	if err != nil {
 		return nil, "", err

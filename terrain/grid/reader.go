@@ -57,7 +57,7 @@ func Open(path string, opts Options) (terrain.Reader, error) {
 	}
 	r := &reader{path: path, ds: ds}
 	if err := r.start(opts); err != nil {
-		ds.Close()
+		_ = ds.Close()
 		return nil, err
 	}
 	return r, nil
@@ -189,7 +189,7 @@ func heightUnit(wkt string) (metres float64, name string, err error) {
 	if err != nil {
 		return 0, "", err
 	}
-	defer crs.Close()
+	defer func() { _ = crs.Close() }()
 	if name, metres := crs.VerticalUnit(); metres > 0 {
 		return metres, name, nil
 	}

@@ -33,7 +33,7 @@ func readAll(t testing.TB, r terrain.Reader, n int) []point {
 	b := terrain.NewBatch(n, terrain.Intensity)
 	for {
 		err := r.Read(b)
-		if err == io.EOF {
+		if errors.Is(err, io.EOF) {
 			if b.Len() != 0 {
 				t.Fatalf("%d points together with io.EOF", b.Len())
 			}
@@ -332,7 +332,7 @@ func BenchmarkRead(b *testing.B) {
 					err = r.Read(batch)
 					n += batch.Len()
 				}
-				if err != io.EOF {
+				if !errors.Is(err, io.EOF) {
 					b.Fatal(err)
 				}
 				r.Close()
@@ -372,7 +372,7 @@ func digest(t *testing.T, path string, n int) (sum [2]float64, err error) {
 	b := terrain.NewBatch(n, 0)
 	for sum[0] < 28672 { // 4096·7
 		err := r.Read(b)
-		if err == io.EOF {
+		if errors.Is(err, io.EOF) {
 			return sum, nil
 		}
 		if err != nil {
