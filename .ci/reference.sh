@@ -13,8 +13,8 @@ if [ "$(id -u)" -ne 0 ]; then run=sudo; fi
 updated=
 skipped=
 
-# install NAME... makes sure that Debian packages are there, or fails.
-install() {
+# need NAME... makes sure that Debian packages are there, or fails.
+need() {
 	missing=
 	for name in "$@"; do
 		dpkg-query -W -f '${Status}' "$name" 2>/dev/null | grep -q 'ok installed' || missing="$missing $name"
@@ -40,18 +40,18 @@ skip() {
 	echo "$1 is left out: $2"
 }
 
-install gdal-bin || {
+command -v gdaldem >/dev/null 2>&1 || need gdal-bin || {
 	echo "gdaldem is missing and gdal-bin could not be installed; see $bin/apt.log" >&2
 	exit 1
 }
 
-if ! install g++ libcgal-dev; then
+if ! need g++ libcgal-dev; then
 	skip CGAL "libcgal-dev could not be installed"
 else
 	g++ -O2 -o "$bin/ellipsoid_cgal" testdata/reference/ellipsoid_cgal.cpp -lgmp -lmpfr
 fi
 
-if ! install r-base-core r-cran-cluster; then
+if ! need r-base-core r-cran-cluster; then
 	skip R "r-cran-cluster could not be installed"
 else
 	cp testdata/reference/ellipsoid.R "$bin/ellipsoid.R"
@@ -66,7 +66,7 @@ headers() {
 	(cd "$1" && apt-get download -q libpcl-dev && dpkg-deb -x libpcl-dev_*.deb .) >"$bin/apt.log" 2>&1
 }
 
-if ! install g++ libeigen3-dev libboost-dev || ! headers "$bin/pcl"; then
+if ! need g++ libeigen3-dev libboost-dev || ! headers "$bin/pcl"; then
 	skip PCL "libpcl-dev could not be downloaded"
 else
 	g++ -O1 -isystem "$(echo "$bin"/pcl/usr/include/pcl-*)" -isystem /usr/include/eigen3 \
