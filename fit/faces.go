@@ -2,7 +2,6 @@ package fit
 
 import (
 	"math"
-	"slices"
 
 	"gonum.org/v1/gonum/spatial/r3"
 
@@ -50,10 +49,10 @@ type hoodMember struct {
 
 // A neighbourhood is everything within the reference radius of a centre.
 type neighbourhood struct {
-	members   []hoodMember
-	free      []int32 // members that no piece has taken, ascending
-	residuals []float64
-	spacing   float64 // edge of the members' voxels
+	members []hoodMember
+	free    []int32           // members that no piece has taken, ascending
+	pieces  [maxFaces][]int32 // members of each piece, ascending
+	spacing float64           // edge of the members' voxels
 }
 
 // A face is a smooth piece of reference surface near a centre. A piece that
@@ -105,7 +104,7 @@ func (h *neighbourhood) findFaces(faces []face, radiusM, proudM float64) []face 
 	h.acceptMinor(faces, radiusM)
 	for n := range faces {
 		if f := &faces[n]; f.accepted {
-			f.surface = h.fitQuadric(f.plane, int8(n), f.cutoff, radiusM)
+			f.surface = h.fitQuadric(f.plane, n, f.cutoff, radiusM)
 		}
 	}
 	return faces
@@ -118,8 +117,12 @@ func (h *neighbourhood) acceptMinor(faces []face, radiusM float64) {
 	for more := true; more; {
 		more = false
 		for n := range faces {
-			if f := &faces[n]; !f.accepted && f.area >= least &&
-				(h.between(faces, n, least) || h.joins(faces, n)) && h.length(n) >= minorLengthR*radiusM {
+			f := &faces[n]
+			if f.accepted || f.area < least {
+				continue
+			}
+			length := h.length(n)
+			if length >= minorLengthR*radiusM && (h.between(faces, n, least) || h.joins(faces, n, length)) {
 				f.accepted, more = true, true
 			}
 		}
@@ -150,20 +153,22 @@ func (h *neighbourhood) bestSeed(proudM float64) (best facePlane, most float64) 
 
 // refine fits the plane to the free members around it by iterated total least
 // squares with Tukey's biweight (Beaton & Tukey 1974, Technometrics 16:147),
-// scaled by the median absolute residual. Members whose normals are more than
-// 40° off take no part.
+// scaled by the mean absolute residual within the cutoff, which the bounds on
+// the cutoff keep from running away. Members whose normals are more than 40° off
+// take no part.
 func (h *neighbourhood) refine(p facePlane, proudM float64) (facePlane, float64, bool) {
 	cutoff := maxMisfit * proudM
 	for range refinements {
-		h.residuals = h.residuals[:0]
 		var m momentSum
+		var misfit, count float64
 		for _, i := range h.free {
 			x := &h.members[i]
 			d := p.signed(x.pos)
 			if math.Abs(d) >= cutoff || r3.Dot(p.n, x.normal) < faceCosine {
 				continue
 			}
-			h.residuals = append(h.residuals, math.Abs(d))
+			misfit += math.Abs(d)
+			count++
 			m.add(x.pos, x.area*tukeyWeight(d/cutoff))
 		}
 		c, centroid, ok := m.covariance()
@@ -177,8 +182,7 @@ func (h *neighbourhood) refine(p facePlane, proudM float64) (facePlane, float64,
 		}
 		turned := r3.Norm(r3.Sub(n, p.n))
 		p = facePlane{n, r3.Dot(n, centroid)}
-		slices.Sort(h.residuals)
-		scale := madToSigma * h.residuals[len(h.residuals)/2]
+		scale := meanToSigma * misfit / count
 		cutoff = min(max(tukeyCutoff*scale, minMisfit*proudM), maxMisfit*proudM)
 		if turned < settledRad {
 			break
@@ -191,6 +195,7 @@ func (h *neighbourhood) refine(p facePlane, proudM float64) (facePlane, float64,
 func (h *neighbourhood) take(p facePlane, cutoff float64, mark int8) face {
 	f := face{plane: p, cutoff: cutoff, nearest: math.Inf(1)}
 	left := h.free[:0]
+	piece := h.pieces[mark][:0]
 	for _, i := range h.free {
 		m := &h.members[i]
 		if math.Abs(p.signed(m.pos)) >= cutoff || r3.Dot(p.n, m.normal) < faceCosine {
@@ -198,10 +203,11 @@ func (h *neighbourhood) take(p facePlane, cutoff float64, mark int8) face {
 			continue
 		}
 		m.face = mark
+		piece = append(piece, i)
 		f.area += m.area
 		f.nearest = min(f.nearest, r3.Norm(m.pos))
 	}
-	h.free = left
+	h.free, h.pieces[mark] = left, piece
 	return f
 }
 
@@ -209,10 +215,8 @@ func (h *neighbourhood) take(p facePlane, cutoff float64, mark int8) face {
 // which is L²/12.
 func (h *neighbourhood) length(n int) float64 {
 	var m momentSum
-	for i := range h.members {
-		if h.members[i].face == int8(n) {
-			m.add(h.members[i].pos, h.members[i].area)
-		}
+	for _, i := range h.pieces[n] {
+		m.add(h.members[i].pos, h.members[i].area)
 	}
 	c, _, _ := m.covariance()
 	lambda, _ := EigenSym3(c)
@@ -228,7 +232,7 @@ func (h *neighbourhood) between(faces []face, n int, leastM2 float64) bool {
 		if k == n || f.area < leastM2 || r3.Dot(f.plane.n, faces[n].plane.n) < minorCosine {
 			continue
 		}
-		switch d := h.meanSigned(f.plane, int8(n)); {
+		switch d := h.meanSigned(f.plane, n); {
 		case d > f.cutoff && f.accepted:
 			before = true
 		case d < -f.cutoff:
@@ -238,20 +242,13 @@ func (h *neighbourhood) between(faces []face, n int, leastM2 float64) bool {
 	return before && behind
 }
 
-// joins reports whether piece n runs along two accepted faces that point
-// elsewhere.
-func (h *neighbourhood) joins(faces []face, n int) bool {
-	var own []r3.Vec
-	for i := range h.members {
-		if h.members[i].face == int8(n) {
-			own = append(own, h.members[i].pos)
-		}
-	}
-	length := h.length(n)
+// joins reports whether piece n, of the given length, runs along two accepted
+// faces that point elsewhere.
+func (h *neighbourhood) joins(faces []face, n int, length float64) bool {
 	touched := 0
 	for k := range faces {
 		if faces[k].accepted && r3.Dot(faces[k].plane.n, faces[n].plane.n) < minorCosine &&
-			h.touching(own, int8(k)) >= minorTouch*length {
+			h.touching(n, k) >= minorTouch*length {
 			touched++
 		}
 	}
@@ -263,15 +260,14 @@ func (h *neighbourhood) joins(faces []face, n int) bool {
 // are left out of both.
 const touchCells = 3.5
 
-// touching is about the length along which the members at own lie next to
-// members of face k.
-func (h *neighbourhood) touching(own []r3.Vec, k int8) float64 {
+// touching is about the length along which piece n lies next to piece k.
+func (h *neighbourhood) touching(n, k int) float64 {
 	reach := touchCells * h.spacing
 	count := 0
-	for _, p := range own {
-		for i := range h.members {
-			m := &h.members[i]
-			if m.face == k && r3.Norm2(r3.Sub(m.pos, p)) <= reach*reach {
+	for _, i := range h.pieces[n] {
+		p := h.members[i].pos
+		for _, j := range h.pieces[k] {
+			if r3.Norm2(r3.Sub(h.members[j].pos, p)) <= reach*reach {
 				count++
 				break
 			}
@@ -281,15 +277,13 @@ func (h *neighbourhood) touching(own []r3.Vec, k int8) float64 {
 	return float64(count) * h.spacing / (touchCells - 1)
 }
 
-// meanSigned is the mean signed distance of the members of piece mark from the
-// plane p.
-func (h *neighbourhood) meanSigned(p facePlane, mark int8) float64 {
+// meanSigned is the mean signed distance of piece n from the plane p.
+func (h *neighbourhood) meanSigned(p facePlane, n int) float64 {
 	var sum, area float64
-	for i := range h.members {
-		if m := &h.members[i]; m.face == mark {
-			sum += m.area * p.signed(m.pos)
-			area += m.area
-		}
+	for _, i := range h.pieces[n] {
+		m := &h.members[i]
+		sum += m.area * p.signed(m.pos)
+		area += m.area
 	}
 	return sum / area
 }

@@ -32,11 +32,11 @@ func (q *quadric) at(x r3.Vec) (signed float64, normal r3.Vec) {
 	return d * s, r3.Scale(s, normal)
 }
 
-// fitQuadric fits the members marked with mark around the plane p, by
+// fitQuadric fits a piece around the plane p, by
 // iteratively reweighted least squares with Tukey's biweight. A plane alone
 // would put the middle of a face that curves with radius ρ off by R²/4ρ: 16 cm
 // at R = 5 m and ρ = 40 m, half of the height that is looked for.
-func (h *neighbourhood) fitQuadric(p facePlane, mark int8, cutoff, radiusM float64) quadric {
+func (h *neighbourhood) fitQuadric(p facePlane, piece int, cutoff, radiusM float64) quadric {
 	q := quadric{n: p.n}
 	q.u = orthogonal(p.n)
 	q.v = r3.Cross(p.n, q.u)
@@ -45,10 +45,7 @@ func (h *neighbourhood) fitQuadric(p facePlane, mark int8, cutoff, radiusM float
 		var a [21]float64 // upper triangle of the normal equations, row by row
 		var b [6]float64
 		var squares, weight float64
-		for i := range h.members {
-			if h.members[i].face != mark {
-				continue
-			}
+		for _, i := range h.pieces[piece] {
 			x := h.members[i].pos
 			d, _ := q.at(x)
 			w := h.members[i].area * tukeyWeight(d/cutoff)

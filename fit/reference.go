@@ -230,8 +230,8 @@ func (w *reliefWorker) choose() {
 
 // meeting tells from which side of each other the members of two faces lie.
 func (w *reliefWorker) meeting(a, b int) meeting {
-	ofB := w.hood.meanSigned(w.faces[a].plane, int8(b))
-	ofA := w.hood.meanSigned(w.faces[b].plane, int8(a))
+	ofB := w.hood.meanSigned(w.faces[a].plane, b)
+	ofA := w.hood.meanSigned(w.faces[b].plane, a)
 	switch {
 	case ofA < 0 && ofB < 0:
 		return outer

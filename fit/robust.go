@@ -6,9 +6,9 @@ const (
 	// Technometrics 16:147–185; Holland & Welsch 1977).
 	tukeyCutoff = 4.685
 
-	// madToSigma turns a median absolute residual into a standard deviation of
-	// normal errors: 1/Φ⁻¹(3/4).
-	madToSigma = 1.482602218505602
+	// meanToSigma turns a mean absolute residual into a standard deviation of
+	// normal errors: √(π/2).
+	meanToSigma = 1.2533141373155003
 )
 
 // tukeyWeight is Tukey's biweight (1−u²)² of a residual in units of the cutoff,
