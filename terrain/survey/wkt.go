@@ -48,7 +48,7 @@ func parseNode(s string, i, depth int) (n node, next int, ok bool) {
 				return node{}, i, false
 			}
 			n.kids = append(n.kids, kid)
-			i = after
+			i, start = after, after
 		case ']':
 			n.to = i + 1
 			return n, i + 1, true

@@ -35,6 +35,7 @@ func TestMetricWKT(t *testing.T) {
 func FuzzParseWKT(f *testing.F) {
 	f.Add(`PROJCRS["a",CS[Cartesian,2],AXIS["e",east,LENGTHUNIT["foot",0.3048]],ID["EPSG",1]]`)
 	f.Add(`A[B["]"],C[1]]`)
+	f.Add(`A[B[1]C[2]]`) // without the comma it once read B for ever
 	f.Fuzz(func(t *testing.T, s string) {
 		root, ok := parseWKT(s)
 		if !ok {
