@@ -2,6 +2,7 @@ package export
 
 import (
 	"bufio"
+	"bytes"
 	"encoding/json"
 	"errors"
 	"fmt"
@@ -215,7 +216,13 @@ func (e *geoJSON) value(v any, decimals int) {
 	case int64:
 		e.buf = strconv.AppendInt(e.buf, v, 10)
 	case float64:
+		from := len(e.buf)
 		e.number(v, decimals)
+		// Readers that guess a column's type from its values take 3 for an
+		// integer, and then lose the fraction of what follows.
+		if !bytes.ContainsAny(e.buf[from:], ".en") {
+			e.raw(".0")
+		}
 	default:
 		panic(fmt.Sprintf("export: value of type %T", v))
 	}

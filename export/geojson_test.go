@@ -183,6 +183,9 @@ func TestGeoJSONValues(t *testing.T) {
 	if got, want := o["centre_e_m"], s.Findings.Obstacles[0].Ellipsoid.Centre.X; got != want {
 		t.Errorf("centre_e_m %v, want exactly %v", got, want)
 	}
+	if text, _ := write(t, tables[0], p); !bytes.Contains(text, []byte(`"semi_axis_1_m":3.0,`)) {
+		t.Error("a whole number of a Real field is written without a point, so that OGR takes it for an integer")
+	}
 	if o["surface_variation"] != nil {
 		t.Errorf("surface_variation %v, want null for NaN", o["surface_variation"])
 	}

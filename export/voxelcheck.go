@@ -1,12 +1,88 @@
 package export
 
 import (
+	"bufio"
+	"errors"
 	"fmt"
+	"io"
 	"math"
 	"math/bits"
 
+	"github.com/parquet-go/parquet-go"
+	"github.com/parquet-go/parquet-go/encoding/thrift"
+	"github.com/parquet-go/parquet-go/format"
+
 	"ledgework/terrain"
 )
+
+// checkRowGroups makes sure that the numbers of rows agree before memory is
+// taken for them.
+func checkRowGroups(f *parquet.File) error {
+	if n := f.NumRows(); n < 0 || n > math.MaxInt32 {
+		return voxelError("footer", fmt.Sprintf("%d voxels", n), nil)
+	}
+	var rows int64
+	for i, rg := range f.RowGroups() {
+		for _, c := range f.Metadata().RowGroups[i].Columns {
+			if c.MetaData.Codec != format.Zstd {
+				return voxelError(fmt.Sprintf("row group %d", i), fmt.Sprintf("compression %v, not zstd", c.MetaData.Codec), nil)
+			}
+		}
+		n := rg.NumRows()
+		if n < 1 || n > rowGroupRows {
+			return voxelError(fmt.Sprintf("row group %d", i), fmt.Sprintf("%d rows, not 1 to %d", n, rowGroupRows), nil)
+		}
+		rows += n
+		for _, chunk := range rg.ColumnChunks() {
+			if repeated := chunk.NumValues() > n && chunk.NumValues() <= n*(maxClass+1); chunk.NumValues() != n && !repeated {
+				return voxelError(fmt.Sprintf("row group %d", i), fmt.Sprintf("%d values for %d rows", chunk.NumValues(), n), nil)
+			}
+		}
+	}
+	if rows != f.NumRows() {
+		return voxelError("footer", fmt.Sprintf("%d rows in row groups, %d in all", rows, f.NumRows()), nil)
+	}
+	return nil
+}
+
+// maxPageBytes bounds a page: WriteVoxels begins a new one at 256 kB.
+const maxPageBytes = 4 << 20
+
+// checkPages reads the header of every page and makes sure that it is one that
+// WriteVoxels writes, before memory is taken by what the header says.
+func checkPages(f *parquet.File, r io.ReaderAt, size int64) error {
+	buffered := bufio.NewReaderSize(nil, 1<<12)
+	for _, rg := range f.Metadata().RowGroups {
+		for _, column := range rg.Columns {
+			meta := &column.MetaData
+			place := "column " + joinPath(meta.PathInSchema)
+			from, n := meta.DataPageOffset, meta.TotalCompressedSize
+			if from < 0 || n < 0 || from > size || n > size-from || meta.DictionaryPageOffset != 0 {
+				return voxelError(place, fmt.Sprintf("%d bytes at %d in a file of %d", n, from, size), nil)
+			}
+			section := io.NewSectionReader(r, from, n)
+			buffered.Reset(section)
+			decoder := thrift.NewDecoder(new(thrift.CompactProtocol).NewReader(buffered))
+			for {
+				if _, err := buffered.Peek(1); errors.Is(err, io.EOF) {
+					break
+				}
+				var page format.PageHeader
+				if err := decoder.Decode(&page); err != nil {
+					return voxelError(place, "damaged page header", err)
+				}
+				if page.Type == format.DictionaryPage || page.UncompressedPageSize < 0 || page.UncompressedPageSize > maxPageBytes ||
+					page.CompressedPageSize < 0 || page.CompressedPageSize > maxPageBytes {
+					return voxelError(place, fmt.Sprintf("%v of %d bytes, %d compressed", page.Type, page.UncompressedPageSize, page.CompressedPageSize), nil)
+				}
+				if _, err := buffered.Discard(int(page.CompressedPageSize)); err != nil {
+					return voxelError(place, "page is cut off", err)
+				}
+			}
+		}
+	}
+	return nil
+}
 
 // checkVoxels checks what arithmetic on voxels relies on.
 func checkVoxels(v *terrain.Voxels) error {

@@ -8,12 +8,10 @@ import (
 	"errors"
 	"fmt"
 	"io"
-	"math"
 	"slices"
 	"strconv"
 
 	"github.com/parquet-go/parquet-go"
-	"github.com/parquet-go/parquet-go/format"
 
 	"ledgework/terrain"
 )
@@ -48,12 +46,18 @@ func ReadVoxels(r io.ReaderAt, size int64) (v *terrain.Voxels, meta VoxelMeta, e
 	if err := checkRowGroups(f); err != nil {
 		return nil, meta, err
 	}
+	if err := checkPages(f, r, size); err != nil {
+		return nil, meta, err
+	}
 	n := int(f.NumRows())
 	v.Cells, v.Moments = make([]terrain.Cell, n), make([]terrain.Moments, n)
 	for _, a := range attributes() {
 		if c := a.column(v); *c != nil {
 			*c = make([]uint64, n)
 		}
+	}
+	if hasClasses {
+		v.Classes = []terrain.ClassCount{}
 	}
 	from := 0
 	for _, rg := range f.RowGroups() {
@@ -209,36 +213,6 @@ func matchSchema(f *parquet.File, v *terrain.Voxels) (columns []*voxelColumn, ha
 	return columns, classLeaves == 2, nil
 }
 
-// checkRowGroups makes sure that the numbers of rows agree before memory is
-// taken for them.
-func checkRowGroups(f *parquet.File) error {
-	if n := f.NumRows(); n < 0 || n > math.MaxInt32 {
-		return voxelError("footer", fmt.Sprintf("%d voxels", n), nil)
-	}
-	var rows int64
-	for i, rg := range f.RowGroups() {
-		for _, c := range f.Metadata().RowGroups[i].Columns {
-			if c.MetaData.Codec != format.Zstd {
-				return voxelError(fmt.Sprintf("row group %d", i), fmt.Sprintf("compression %v, not zstd", c.MetaData.Codec), nil)
-			}
-		}
-		n := rg.NumRows()
-		if n < 1 || n > rowGroupRows {
-			return voxelError(fmt.Sprintf("row group %d", i), fmt.Sprintf("%d rows, not 1 to %d", n, rowGroupRows), nil)
-		}
-		rows += n
-		for _, chunk := range rg.ColumnChunks() {
-			if repeated := chunk.NumValues() > n && chunk.NumValues() <= n*(maxClass+1); chunk.NumValues() != n && !repeated {
-				return voxelError(fmt.Sprintf("row group %d", i), fmt.Sprintf("%d values for %d rows", chunk.NumValues(), n), nil)
-			}
-		}
-	}
-	if rows != f.NumRows() {
-		return voxelError("footer", fmt.Sprintf("%d rows in row groups, %d in all", rows, f.NumRows()), nil)
-	}
-	return nil
-}
-
 // readColumn reads rows from to to of one column.
 func readColumn(chunk parquet.ColumnChunk, v *terrain.Voxels, c *voxelColumn, from, to int) error {
 	place := "column " + c.name
@@ -279,9 +253,6 @@ func readClasses(f *parquet.File, rg parquet.RowGroup, v *terrain.Voxels, from, 
 	leaf := func(name string) parquet.Pages {
 		column, _ := f.Schema().Lookup(classesName, name)
 		return rg.ColumnChunks()[column.ColumnIndex].Pages()
-	}
-	if v.Classes == nil {
-		v.Classes = []terrain.ClassCount{}
 	}
 	first := len(v.Classes)
 	row := from - 1

@@ -79,6 +79,7 @@ func TestVoxelsRoundTrip(t *testing.T) {
 			v.Red, v.Green, v.Blue, v.Classes = nil, nil, nil, nil
 			return v
 		}()},
+		{"none, but classes", &terrain.Voxels{Lattice: randomVoxels(t, 1, false).Lattice, Cells: []terrain.Cell{}, Moments: []terrain.Moments{}, Classes: []terrain.ClassCount{}}},
 		{"none", &terrain.Voxels{Lattice: randomVoxels(t, 1, false).Lattice, Cells: []terrain.Cell{}, Moments: []terrain.Moments{}}},
 	}
 	for _, tt := range tests {
