@@ -173,7 +173,7 @@ func readHead(path string) ([]byte, error) {
 	defer f.Close()
 	head := make([]byte, headBytes)
 	n, err := io.ReadFull(f, head)
-	if err != nil && err != io.EOF && err != io.ErrUnexpectedEOF {
+	if err != nil && !errors.Is(err, io.EOF) && !errors.Is(err, io.ErrUnexpectedEOF) {
 		return nil, fileError(path, err)
 	}
 	return head[:n], nil
@@ -196,7 +196,7 @@ func fileError(path string, err error) error {
 
 // wrap puts the path before an error.
 func (f *file) wrap(err error) error {
-	if err == nil || err == io.EOF {
+	if err == nil || errors.Is(err, io.EOF) {
 		return err
 	}
 	return fmt.Errorf("%s: %w", f.path, err)
