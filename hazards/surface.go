@@ -40,7 +40,7 @@ type Surface struct {
 // relief may change from one to the next.
 const (
 	membersPerRadius = 25
-	centresPerRadius = 6
+	centresPerRadius = 5
 )
 
 // NewSurface fits local planes at the surface radius to every voxel of v and
