@@ -1,6 +1,7 @@
 package survey
 
 import (
+	"cmp"
 	"errors"
 	"fmt"
 	"io/fs"
@@ -14,14 +15,15 @@ import (
 
 // Expand turns the patterns of a worksite file into paths of survey files,
 // sorted and each once. A pattern is a file, a folder or a glob in the syntax
-// of filepath.Match, relative to base unless absolute. A folder stands for
-// every file below it that looks like a survey by its name, hidden folders
-// and files excepted; text files must also look like points. Files that only
-// accompany a survey (.prj, .tfw, .aux.xml and the like) are left out of
+// of filepath.Match, relative to base (the working directory if empty) unless
+// absolute. A folder stands for every file below it that looks like a survey by
+// its name, hidden folders and files excepted; text files must also look like
+// points. Files that only accompany a survey (.prj, .tfw, .aux.xml and the like) are left out of
 // folders and globs.
 //
 // A pattern that yields nothing is an error that names it.
 func Expand(base string, patterns []string) ([]string, error) {
+	base = cmp.Or(base, ".")
 	var all []string
 	for _, pattern := range patterns {
 		found, err := expandOne(base, pattern)

@@ -103,7 +103,7 @@ func middle(probes []*probe) (lon, lat float64, err error) {
 		}
 		x, y, z := lattice(p.extent)
 		if err := lonLat(p.system, x, y, z); err != nil {
-			return 0, 0, &placeError{p.src.Path, "its coordinates have no place on earth: " + err.Error(), "check its CRS"}
+			return 0, 0, placeError(p.src.Path, "its coordinates have no place on earth: "+err.Error(), "check its CRS")
 		}
 		for i := range x {
 			if finite(x[i], y[i], 0) {

@@ -46,7 +46,9 @@ const (
 //
 // Headers are read, and the points of a file whose header has no usable
 // extent. Plan fails when the sources lie in different places or spread over
-// more than 1000 km.
+// more than 1000 km, or make no sense in their CRS, with a terrain.FormatError
+// after the path; with terrain.ErrNoPoints for a file without points; and with
+// neither where want, or the CRS given with a source, is at fault.
 func Plan(ctx context.Context, sources []Source, want string) (*Frame, error) {
 	probes := make([]*probe, 0, len(sources))
 	known := make(systems)
@@ -91,7 +93,10 @@ func choose(probes []*probe, want string) (*Frame, error) {
 	}
 	f.checkHeights(probes)
 	f.Notes = append(f.Notes, gatherNotes(probes)...)
-	return f, f.checkPlaces(probes)
+	if err := f.checkPlaces(probes); err != nil {
+		return nil, err
+	}
+	return f, nil
 }
 
 // settle decides what the coordinates of a source are, where its CRS and its
@@ -100,11 +105,11 @@ func (p *probe) settle() error {
 	degrees := looksLikeDegrees(p.extent, p.header.Cell > 0)
 	switch {
 	case p.system.kind == geographic && !fitsDegrees(p.extent):
-		return &placeError{p.src.Path, fmt.Sprintf("the CRS %q is in degrees but the coordinates aren't (%s)", p.system.name, describeExtent(p.extent)),
-			"give crs: EPSG:n of the projection they are in"}
+		return placeError(p.src.Path, fmt.Sprintf("the CRS %q is in degrees but the coordinates aren't (%s)", p.system.name, describeExtent(p.extent)),
+			"give crs: EPSG:n of the projection they are in")
 	case p.system.kind == projected && degrees:
-		return &placeError{p.src.Path, fmt.Sprintf("the coordinates look like degrees (%s) but the CRS %q is in %s", describeExtent(p.extent), p.system.name, p.system.unitName),
-			"give crs: EPSG:4326, or the geographic CRS they are in"}
+		return placeError(p.src.Path, fmt.Sprintf("the coordinates look like degrees (%s) but the CRS %q is in %s", describeExtent(p.extent), p.system.name, p.system.unitName),
+			"give crs: EPSG:4326, or the geographic CRS they are in")
 	case p.system.kind == local && degrees:
 		s, err := parseSystem(wgs84)
 		if err != nil {
@@ -116,17 +121,17 @@ func (p *probe) settle() error {
 	return nil
 }
 
-// A placeError says that a file's coordinates are impossible.
-type placeError struct{ path, reason, remedy string }
-
-func (e *placeError) Error() string { return e.path + ": survey: " + e.reason + "; " + e.remedy }
+// placeError says that the coordinates of a file are impossible.
+func placeError(path, reason, remedy string) error {
+	return fmt.Errorf("%s: %w", path, &terrain.FormatError{Format: "survey", Reason: reason, Remedy: remedy})
+}
 
 // workingSystem chooses the working CRS.
 func (f *Frame) workingSystem(probes []*probe, want string) (system, error) {
 	if want != "" && want != "auto" {
 		s, err := parseSystem(want)
 		if err != nil {
-			return system{}, fmt.Errorf("survey: the working CRS %q can't be understood: %w; give auto, EPSG:n, WKT or PROJJSON", want, err)
+			return system{}, fmt.Errorf("survey: the working CRS %q can't be understood: %s; give auto, EPSG:n, WKT or PROJJSON", want, err.Error())
 		}
 		if s.kind != projected {
 			return system{}, fmt.Errorf("survey: the working CRS %q is not a projected one; leave crs: auto, and give the CRS of the coordinates with the surveys", s.name)
@@ -194,11 +199,11 @@ func (f *Frame) add(p *probe, work system) error {
 			p.note("there is no CRS: its coordinates are taken to be in the working CRS %q", work.name)
 		}
 	case s.kind == local && work.kind != local:
-		return &placeError{p.src.Path, fmt.Sprintf("its coordinate system %q is tied to no place on earth, but other surveys are", s.name),
-			"give crs: EPSG:n of its coordinates, or leave it out"}
+		return placeError(p.src.Path, fmt.Sprintf("its coordinate system %q is tied to no place on earth, but other surveys are", s.name),
+			"give crs: EPSG:n of its coordinates, or leave it out")
 	case s.kind == local:
 	case work.kind == local:
-		return &placeError{p.src.Path, "it has a CRS and the first survey's is tied to no place on earth", "give that one's crs: EPSG:n"}
+		return placeError(p.src.Path, "it has a CRS and the first survey's is tied to no place on earth", "give that one's crs: EPSG:n")
 	case s.kind == geocentric:
 		pl.how, pl.z = geocentre, 1
 	default:
@@ -222,7 +227,12 @@ func (f *Frame) add(p *probe, work system) error {
 	if pl.extent, err = t.extent(p.extent); err != nil {
 		return fmt.Errorf("%s: survey: its coordinates have no place in %q: %w; check its CRS", p.src.Path, f.Name, err)
 	}
-	f.GridCell = max(f.GridCell, t.cell(p.extent, p.header.Cell))
+	if side := t.cell(p.extent, p.header.Cell); side > 0 {
+		f.GridCell = max(f.GridCell, side)
+		if pl.how != scaled {
+			p.note("a grid's cell of %.6g in its own CRS is up to %g m wide in the working CRS, the finest spacing without holes; each cell is a point at its middle", p.header.Cell, side)
+		}
+	}
 	if pl.how != scaled {
 		p.noteAccuracy(t.through.Accuracy())
 	}
@@ -284,8 +294,8 @@ func (f *Frame) checkPlaces(probes []*probe) error {
 		e := f.plans[p.src].extent
 		for a, axis := range [3]string{"east", "north", "up"} {
 			if w := e.Max[a] - e.Min[a]; !(w <= maxSpanM) {
-				return &placeError{p.src.Path, fmt.Sprintf("its points spread over %.4g km %s, which is no site", w/1000, axis),
-					"remove stray points, or give its right crs: EPSG:n"}
+				return placeError(p.src.Path, fmt.Sprintf("its points spread over %.4g km %s, which is no site", w/1000, axis),
+					"remove stray points, or give its right crs: EPSG:n")
 			}
 		}
 	}
@@ -312,8 +322,8 @@ func (f *Frame) checkPlaces(probes []*probe) error {
 			near = p
 		}
 	}
-	return &placeError{lost.src.Path, fmt.Sprintf("it lies %.4g km away from %s", f.apart(near, lost)/1000, near.src.Path),
-		"surveys of one worksite must be of one place: check the crs of both"}
+	return placeError(lost.src.Path, fmt.Sprintf("it lies %.4g km away from %s", f.apart(near, lost)/1000, near.src.Path),
+		"surveys of one worksite must be of one place: check the crs of both")
 }
 
 // apart is the distance between two sources in different places, 0 if they

@@ -202,6 +202,10 @@ func TestPlanRefuses(t *testing.T) {
 			if err == nil {
 				t.Fatal("no error")
 			}
+			var bad *terrain.FormatError
+			if survey := errors.As(err, &bad) || errors.Is(err, terrain.ErrNoPoints); survey != (tt.want == "") {
+				t.Errorf("error %T blames the survey: %v", err, survey)
+			}
 			for _, m := range tt.msg {
 				if !strings.Contains(err.Error(), m) {
 					t.Errorf("error %q lacks %q", err, m)

@@ -41,7 +41,7 @@ func examine(ctx context.Context, src Source, r terrain.Reader, known systems) (
 	if p.header.CRS != "" {
 		s, err := known.parse(p.header.CRS)
 		if err != nil && src.CRS != "" {
-			return nil, fmt.Errorf("%s: survey: the given CRS %q can't be understood: %w; give EPSG:n, WKT or PROJJSON", src.Path, src.CRS, err)
+			return nil, fmt.Errorf("%s: survey: the given CRS %q can't be understood: %s; give EPSG:n, WKT or PROJJSON", src.Path, src.CRS, err.Error())
 		}
 		if err != nil {
 			p.note("the file's CRS can't be understood (%v) and is left aside; give crs: EPSG:n to place it", err)
