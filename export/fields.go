@@ -1,7 +1,7 @@
 package export
 
 import (
-	"bufio"
+	"bytes"
 	"fmt"
 	"io"
 	"strings"
@@ -77,21 +77,21 @@ func values[T any](row *T, columns []column[T]) []any {
 
 // WriteDictionaryMarkdown writes Dictionary as a Markdown document.
 func WriteDictionaryMarkdown(w io.Writer) error {
-	b := bufio.NewWriter(w)
-	fmt.Fprint(b, "<!-- Code generated from the layers of package export. DO NOT EDIT. -->\n\n# Properties of the layers\n\n")
-	fmt.Fprintf(b, "%s\n\n", Caution)
-	fmt.Fprint(b, "Lengths are metres, angles degrees, azimuths clockwise from grid north. East, north and height are those of the\n"+
-		"working CRS, which layer `site` names. A number is written with at most the digits given after the point; \"full\" means\n"+
-		"the fewest digits that read back as the same 64 bit number. Names are kept from version to version: a changed name\n"+
+	var b bytes.Buffer
+	b.WriteString("<!-- Code generated from the layers of package export. DO NOT EDIT. -->\n\n# Properties of the layers\n\n")
+	fmt.Fprintf(&b, "%s\n\n", Caution)
+	b.WriteString("Lengths are metres, angles degrees, azimuths clockwise from grid north. East, north and height are those of the\n" +
+		"working CRS, which layer `site` names. A number is written with at most the digits given after the point; \"full\" means\n" +
+		"the fewest digits that read back as the same 64 bit number. Names are kept from version to version: a changed name\n" +
 		"would be noted here.\n")
 	for _, l := range Dictionary() {
-		fmt.Fprintf(b, "\n## %s (`%s`)\n\n%s\n\n", l.Title, l.Name, l.Meaning)
-		fmt.Fprint(b, "| property | type | unit | digits | values | null | meaning |\n|---|---|---|---|---|---|---|\n")
+		fmt.Fprintf(&b, "\n## %s (`%s`)\n\n%s\n\n", l.Title, l.Name, l.Meaning)
+		b.WriteString("| property | type | unit | digits | values | null | meaning |\n|---|---|---|---|---|---|---|\n")
 		for _, f := range l.Fields {
-			fmt.Fprintf(b, "| `%s` | %s | %s | %s | %s | %s | %s |\n", f.Name, f.Type, f.Unit, f.digits(), cell(f.Range), cell(f.Null), cell(f.Meaning))
+			fmt.Fprintf(&b, "| `%s` | %s | %s | %s | %s | %s | %s |\n", f.Name, f.Type, f.Unit, f.digits(), cell(f.Range), cell(f.Null), cell(f.Meaning))
 		}
 	}
-	if err := b.Flush(); err != nil {
+	if _, err := b.WriteTo(w); err != nil {
 		return fmt.Errorf("export: data dictionary: %w", err)
 	}
 	return nil

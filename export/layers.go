@@ -9,6 +9,7 @@ import (
 
 	"gonum.org/v1/gonum/spatial/r3"
 
+	"ledgework/fit"
 	"ledgework/hazards"
 )
 
@@ -101,7 +102,8 @@ func obstacleRows(s *Site) []obstacleRow {
 	rows := make([]obstacleRow, len(s.Findings.Obstacles))
 	for i := range rows {
 		o := &s.Findings.Obstacles[i]
-		rows[i] = obstacleRow{Obstacle: o, quat: quaternion(o.Ellipsoid.Axes), inflatedByM: s.InflatedByM}
+		w, x, y, z := o.Ellipsoid.Quaternion()
+		rows[i] = obstacleRow{Obstacle: o, quat: [4]float64{w, x, y, z}, inflatedByM: s.InflatedByM}
 	}
 	return rows
 }
@@ -149,7 +151,7 @@ func zoneRows(s *Site) []zoneRow {
 	rows := make([]zoneRow, len(s.Findings.Zones))
 	for i := range rows {
 		z := &s.Findings.Zones[i]
-		row := zoneRow{Zone: z, normal: normalOf(z.InclinationDeg, z.DipDirectionDeg), hMin: math.Inf(1), hMax: math.Inf(-1)}
+		row := zoneRow{Zone: z, normal: fit.NormalOf(z.InclinationDeg, z.DipDirectionDeg), hMin: math.Inf(1), hMax: math.Inf(-1)}
 		var mean r3.Vec // running mean: a plain sum of northings would lose digits
 		for n, v := range z.Voxels {
 			p := s.Voxels.Mean(int(v))

@@ -1,7 +1,7 @@
 package export
 
 import (
-	"bufio"
+	"bytes"
 	"encoding/csv"
 	"fmt"
 	"io"
@@ -43,7 +43,7 @@ func WriteCSV(w io.Writer, t *Table) error {
 // WriteCSVTypes writes the column types that GDAL's CSV driver looks for in a
 // file beside the table, of the same name with the ending .csvt.
 func WriteCSVTypes(w io.Writer, l Layer) error {
-	b := bufio.NewWriter(w)
+	var b bytes.Buffer
 	b.WriteString(`"WKT"`)
 	for _, f := range l.Fields {
 		switch f.Type {
@@ -58,7 +58,7 @@ func WriteCSVTypes(w io.Writer, l Layer) error {
 		}
 	}
 	b.WriteString("\n")
-	if err := b.Flush(); err != nil {
+	if _, err := b.WriteTo(w); err != nil {
 		return fmt.Errorf("export: types of layer %s: %w", l.Name, err)
 	}
 	return nil

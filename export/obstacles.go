@@ -97,9 +97,7 @@ func obstacleColumns() []column[obstacleRow] {
 		number("height_m", "m", metreDigits, "> 0", "greatest relief of a bulge, depth of a recess, or reach of an overhang from lip to back", func(r *row) float64 { return r.HeightM }),
 		number("area_m2", "m²", metreDigits, "> 0", "surface area", func(r *row) float64 { return r.AreaM2 }),
 		number("rock_volume_m3", "m³", cubicDigits, "≥ 0", "volume between surface and reference face; of a recess, the missing rock", func(r *row) float64 { return r.RockVolumeM3 }),
-		number("ellipsoid_volume_m3", "m³", cubicDigits, "> 0", "volume of the whole ellipsoid, on both sides of the reference face", func(r *row) float64 {
-			return volume(r.Ellipsoid)
-		}),
+		number("ellipsoid_volume_m3", "m³", cubicDigits, "> 0", "volume of the whole ellipsoid, on both sides of the reference face", func(r *row) float64 { return r.Ellipsoid.Volume() }),
 		number("rock_share", "", ratioDigits, "≥ 0", "rock volume over the part of the ellipsoid on the same side of the reference face", func(r *row) float64 { return r.RockShare }),
 		number("volume_gap", "", FullPrecision, "≥ 0", "relative bound on how much larger the ellipsoid was than the smallest possible one, before it was scaled to contain every point", func(r *row) float64 { return r.VolumeGap }),
 		number("inclination_deg", "°", degreeDigits, "0 to 180", "inclination of its steepest local plane: 0 flat, 90 vertical, more overhanging", func(r *row) float64 { return r.InclinationDeg }),
@@ -118,7 +116,7 @@ func obstacleColumns() []column[obstacleRow] {
 		number("face_normal_e", "", FullPrecision, "-1 to 1", "unit normal of the reference face, pointing into the air: east part", func(r *row) float64 { return r.Face.Normal.X }),
 		number("face_normal_n", "", FullPrecision, "-1 to 1", "its north part", func(r *row) float64 { return r.Face.Normal.Y }),
 		number("face_normal_h", "", FullPrecision, "-1 to 1", "its upward part", func(r *row) float64 { return r.Face.Normal.Z }),
-		number("face_inclination_deg", "°", degreeDigits, "0 to 180", "inclination of the reference face", func(r *row) float64 { return inclination(r.Face.Normal) }),
+		number("face_inclination_deg", "°", degreeDigits, "0 to 180", "inclination of the reference face", func(r *row) float64 { return fit.InclinationDeg(r.Face.Normal) }),
 		count("voxels", "≥ 1", "occupied voxels", func(r *row) int64 { return int64(len(r.Voxels)) }),
 	)
 }
@@ -129,18 +127,13 @@ func axisColumns() []column[obstacleRow] {
 	for i, n := range [3]string{"1", "2", "3"} {
 		out = append(out,
 			number("axis_"+n+"_trend_deg", "°", degreeDigits, "0 to 360", "azimuth of the downward end of semi-axis "+n, func(r *obstacleRow) float64 {
-				trend, _ := trendPlunge(r.Ellipsoid.Axes[i])
+				trend, _ := r.Ellipsoid.TrendPlunge(i)
 				return trend
 			}),
 			number("axis_"+n+"_plunge_deg", "°", degreeDigits, "0 to 90", "angle of that end below the horizontal", func(r *obstacleRow) float64 {
-				_, plunge := trendPlunge(r.Ellipsoid.Axes[i])
+				_, plunge := r.Ellipsoid.TrendPlunge(i)
 				return plunge
 			}))
 	}
 	return out
-}
-
-// volume is that of the whole ellipsoid in m³.
-func volume(e fit.Ellipsoid) float64 {
-	return 4 * math.Pi / 3 * e.SemiAxes[0] * e.SemiAxes[1] * e.SemiAxes[2]
 }
