@@ -3,13 +3,14 @@ package terrain
 import "slices"
 
 // Cleaning judges a voxel isolated when fewer than isolatedNeighbours others
-// lie within isolatedReach cells and it holds less than a third of the points
-// that are usual around it.
+// lie within isolatedReach cells, and around it either three times as many
+// points a voxel, or three times as many neighbours, are usual.
 const (
 	isolatedNeighbours = 3
 	isolatedReach      = 3  // cells
 	usualReach         = 10 // cells: what "around it" means
-	usualShare         = 3
+	usualTimes         = 3
+	usualSample        = 2000 // voxels that the usual of a whole survey is taken from
 )
 
 // A Cleaned says what Clean dropped.
@@ -19,18 +20,22 @@ type Cleaned struct {
 }
 
 // Clean returns v without its isolated voxels: those with fewer than three
-// other occupied voxels within three cells (between centres), and fewer points
-// than a third of the median of the voxels within ten cells, or of the whole
-// survey where there are none. Birds, dust and multipath strays go; the edge
-// of a thinly scanned face stays. v is not changed; it is returned itself when
-// nothing is dropped.
+// other occupied voxels within three cells (between centres) where more is
+// usual. It is usual, by the median of the voxels within ten cells, or of the
+// whole survey where there are none, to hold more than three times as many
+// points, or to have three times as many neighbours. Birds, dust and multipath
+// strays go; the edge of a thinly scanned face stays, and so does a wire. v is
+// not changed; it is returned itself when nothing is dropped.
+//
+// Points alone would not do: where a survey has one or two points a voxel, a
+// stray has as many as the surface.
 func Clean(v *Voxels) (*Voxels, Cleaned) {
 	x := NewIndex(v)
 	var dropped Cleaned
 	drop := make([]bool, v.Len())
-	usual := medianPoints(v.Moments, nil)
+	survey := x.usualOf(sample(v.Len()))
 	for i := range v.Cells {
-		if !isolated(x, i, usual) {
+		if !x.isolated(i, survey) {
 			continue
 		}
 		drop[i] = true
@@ -43,14 +48,47 @@ func Clean(v *Voxels) (*Voxels, Cleaned) {
 	return v.without(drop), dropped
 }
 
-func isolated(x *Index, i int, usual int64) bool {
+// usual is what the median voxel of some has.
+type usual struct {
+	points     int64
+	neighbours int // within isolatedReach cells, counted no further than needed
+}
+
+// sample lists about usualSample of n voxels, evenly.
+func sample(n int) []int32 {
+	var s []int32
+	for i := 0; i < n; i += 1 + n/usualSample {
+		s = append(s, int32(i))
+	}
+	return s
+}
+
+func (x *Index) usualOf(which []int32) usual {
+	points, neighbours := make([]int64, len(which)), make([]int, len(which))
+	for i, w := range which {
+		points[i] = x.voxels.Moments[w].N
+		neighbours[i] = len(x.around(int(w), isolatedReach, usualTimes*isolatedNeighbours))
+	}
+	return usual{lowerMedian(points), lowerMedian(neighbours)}
+}
+
+// lowerMedian sorts v. It is zero without values.
+func lowerMedian[T int | int64](v []T) T {
+	if len(v) == 0 {
+		return 0
+	}
+	slices.Sort(v)
+	return v[(len(v)-1)/2]
+}
+
+func (x *Index) isolated(i int, u usual) bool {
 	if len(x.around(i, isolatedReach, isolatedNeighbours)) >= isolatedNeighbours {
 		return false
 	}
 	if near := x.around(i, usualReach, -1); len(near) > 0 {
-		usual = medianPoints(x.voxels.Moments, near)
+		u = x.usualOf(near)
 	}
-	return usualShare*x.voxels.Moments[i].N < usual
+	return usualTimes*x.voxels.Moments[i].N < u.points || u.neighbours >= usualTimes*isolatedNeighbours
 }
 
 // around returns the other voxels whose centres lie within reach cells of
@@ -74,28 +112,6 @@ func (x *Index) around(i int, reach int32, enough int) []int32 {
 		}
 	}
 	return found
-}
-
-// medianPoints is the lower median of the points per voxel, of the voxels
-// listed or, if none are, of all.
-func medianPoints(m []Moments, which []int32) int64 {
-	var n []int64
-	if which == nil {
-		n = make([]int64, len(m))
-		for i := range m {
-			n[i] = m[i].N
-		}
-	} else {
-		n = make([]int64, len(which))
-		for i, w := range which {
-			n[i] = m[w].N
-		}
-	}
-	if len(n) == 0 {
-		return 0
-	}
-	slices.Sort(n)
-	return n[(len(n)-1)/2]
 }
 
 // without returns a copy of v that lacks the marked voxels.

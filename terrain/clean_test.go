@@ -37,6 +37,29 @@ func TestCleanDropsStraysOnly(t *testing.T) {
 	}
 }
 
+// Where the surface has a point or two a voxel, a stray has as many.
+func TestCleanOfThinScan(t *testing.T) {
+	var points []r3.Vec
+	for i := range 60 {
+		for k := range 60 {
+			points = append(points, r3.Vec{X: float64(i) * 0.11, Z: float64(k) * 0.11})
+		}
+	}
+	// The face thins out towards one edge, which is no reason to drop it.
+	for i := range 20 {
+		points = append(points, r3.Vec{X: -0.25 * float64(1+i/10), Z: 0.25 * float64(i%10)})
+	}
+	surface := len(points)
+	points = append(points, r3.Vec{X: 3, Y: -1, Z: 3}, r3.Vec{X: 3, Y: -30, Z: 3})
+	v, err := SumPoints(mustLattice(t, 0.1), points)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if cleaned, dropped := Clean(v); dropped != (Cleaned{2, 2}) || cleaned.Points() != int64(surface) {
+		t.Errorf("dropped %+v, want the two strays", dropped)
+	}
+}
+
 func TestCleanKeepsAttributesInStep(t *testing.T) {
 	b := NewBatch(100, Intensity|Color|Class)
 	b.Resize(100)
@@ -44,7 +67,7 @@ func TestCleanKeepsAttributesInStep(t *testing.T) {
 		b.X[i], b.Y[i], b.Z[i] = float64(i%8)*0.5, float64(i/8)*0.5, 0
 		b.Intensity[i], b.Red[i], b.Class[i] = uint16(i), uint16(i), uint8(i%3)
 	}
-	b.X[99], b.Y[99] = 500, 0 // a stray, with a third of the usual points only if that is more than one
+	b.X[99], b.Y[99] = 500, 0
 	l := mustLattice(t, 2)
 	a := NewAccumulator(l, b.Columns())
 	if err := a.NewAdder().Add(b); err != nil {
