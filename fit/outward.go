@@ -153,7 +153,6 @@ func blocked(x *terrain.Index, p, n r3.Vec) bool {
 func OrientFrom(ctx context.Context, x *terrain.Index, planes, coarse *LocalPlanes, parent []int32, sensors []r3.Vec) error {
 	n := x.Voxels().Len()
 	known := make([]bool, n)
-	var sure []int32
 	for i := range n {
 		if !planes.Fitted(i) {
 			continue
@@ -164,24 +163,30 @@ func OrientFrom(ctx context.Context, x *terrain.Index, planes, coarse *LocalPlan
 		}
 		known[i] = math.Abs(d) >= sureCosine
 	}
-	for i := range n {
-		if known[i] && hasUnknown(x, planes, known, i) {
-			sure = append(sure, int32(i))
-		}
-	}
 	if err := ctx.Err(); err != nil {
 		return err
 	}
-	propagate(x, planes, known, sure, 0)
+	propagate(x, planes, known, besideUnknown(x, planes, known), 0)
 	_, err := settle(ctx, x, planes, known, sensors)
 	return err
 }
 
-// hasUnknown reports whether voxel i has a fitted neighbour that is not known.
-func hasUnknown(x *terrain.Index, planes *LocalPlanes, known []bool, i int) bool {
-	found := false
-	neighbours(x, i, func(j int) { found = found || !known[j] && planes.Fitted(j) })
-	return found
+// besideUnknown lists the known voxels next to fitted ones that are not known.
+func besideUnknown(x *terrain.Index, planes *LocalPlanes, known []bool) []int32 {
+	listed := make([]bool, len(known))
+	var list []int32
+	for i := range known {
+		if known[i] || !planes.Fitted(i) {
+			continue
+		}
+		neighbours(x, i, func(j int) {
+			if known[j] && !listed[j] {
+				listed[j] = true
+				list = append(list, int32(j))
+			}
+		})
+	}
+	return list
 }
 
 // neighbours calls f for the voxels within graphReach cells of voxel i.
