@@ -115,8 +115,10 @@ func makeDemo(ctx context.Context, g *globals, opts DemoOptions, dir string, pro
 		return nil, err
 	}
 	w := worksite.Default()
-	w.Site, w.SpacingM = site.Name(), 0.05
-	w.CRS = site.CRS()
+	w.Site, w.CRS = site.Name(), site.CRS()
+	if opts.Points >= demo.DefaultPoints {
+		w.SpacingM = 0.05 // finer than auto, which suits thinner surveys
+	}
 	s := worksite.Survey{Date: season.Date(), Files: []string{"survey/" + season.Date() + "/*.las"}, AccuracyM: season.Truth().NoiseSigmaM}
 	for _, p := range season.Stations() {
 		s.Sensors = append(s.Sensors, worksite.Point{p.X, p.Y, p.Z})

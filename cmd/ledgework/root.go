@@ -35,6 +35,8 @@ scores the places where a platform can be set down, and writes both as GIS layer
 
 It shows geometry on the day of the survey, as far as the sensors saw it. It is a
 screening aid: a competent person on site, local codes and licensed practice decide.`,
+		SuggestionsMinimumDistance: 2,
+
 		SilenceErrors: true,
 		SilenceUsage:  true,
 		Args:          knownCommand,

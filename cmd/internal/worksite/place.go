@@ -6,6 +6,7 @@ import (
 	"strings"
 
 	"ledgework/export"
+	"ledgework/terrain"
 	"ledgework/terrain/gdal"
 	"ledgework/terrain/survey"
 )
@@ -34,8 +35,12 @@ func (w *Worksite) checkCRS() error {
 
 func parseCRS(text string) (projected bool, err error) {
 	c, err := gdal.ParseCRS(text)
+	var bad *terrain.FormatError
+	if errors.As(err, &bad) {
+		return false, fmt.Errorf("%q: %s", text, bad.Reason)
+	}
 	if err != nil {
-		return false, errors.New(strings.TrimPrefix(err.Error(), "gdal: "))
+		return false, err
 	}
 	defer c.Close()
 	return c.IsProjected(), nil
