@@ -21,8 +21,9 @@ const (
 // FindObstacles finds the bulges, overhangs and recesses of s, whose relief
 // must have been measured, sorted by id. Each is a connected set of voxels
 // (26-neighbourhood, gaps of two spacings bridged) that holds at least one
-// voxel beyond the threshold and grows to those beyond half of it (beyond
-// vertical for an overhang). A bulge and an overhang that share voxels are one
+// voxel beyond the threshold and grows to those beyond half of it (for an
+// overhang, half of its tolerance: to the vertical, it would grow over every
+// sheer wall). A bulge and an overhang that share voxels are one
 // obstacle.
 func FindObstacles(ctx context.Context, s *Surface) ([]Obstacle, error) {
 	regions, err := s.findRegions(ctx)
@@ -65,6 +66,7 @@ type region struct {
 func (s *Surface) findRegions(ctx context.Context) ([]region, error) {
 	o, relief := &s.options, s.Relief.Height
 	steep := math.Cos((90 + o.OverhangToleranceDeg) * math.Pi / 180)
+	beyond := math.Cos((90 + growShare*o.OverhangToleranceDeg) * math.Pi / 180)
 	fitted := s.Planes.Fitted
 	bulges, err := s.segment(ctx,
 		func(i int) bool { return relief[i] >= growShare*o.BulgeHeightM },
@@ -79,7 +81,7 @@ func (s *Surface) findRegions(ctx context.Context) ([]region, error) {
 		return nil, err
 	}
 	overhangs, err := s.segment(ctx,
-		func(i int) bool { return fitted(i) && s.Planes.Normal[i].Z < 0 },
+		func(i int) bool { return fitted(i) && s.Planes.Normal[i].Z < beyond },
 		func(i int) bool {
 			// Not where the plane itself is unsure by as much.
 			return fitted(i) && s.Planes.Normal[i].Z < steep && float64(s.Planes.SigmaDeg[i]) < o.OverhangToleranceDeg
