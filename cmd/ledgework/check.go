@@ -42,9 +42,6 @@ func runCheck(ctx context.Context, g *globals, args []string, term *terminal) er
 	t := tabwriter.NewWriter(term.out, 0, 0, 2, ' ', 0)
 	for _, f := range c.Files {
 		fmt.Fprintf(t, "%s\t%s\t%s\n", f.Path, f.Format, points(f.Points))
-		for _, n := range f.Notes {
-			fmt.Fprintf(t, "\tnote: %s\n", n)
-		}
 	}
 	if err := t.Flush(); err != nil {
 		return err

@@ -84,15 +84,14 @@ type Checked struct {
 	Files    []CheckedFile `json:"files"`
 	CRS      string        `json:"crs,omitempty"` // authority code of the working CRS, or its name
 	Points   int64         `json:"points"`
-	Notes    []string      `json:"notes"`
+	Notes    []string      `json:"notes"` // on all files, each under the name of its file
 }
 
 // A CheckedFile is what one file's header says.
 type CheckedFile struct {
-	Path   string   `json:"path"`
-	Format string   `json:"format"`
-	Points int64    `json:"points"` // -1 if the header does not say
-	Notes  []string `json:"notes,omitempty"`
+	Path   string `json:"path"`
+	Format string `json:"format"`
+	Points int64  `json:"points"` // -1 if the header does not say
 }
 
 // Check opens every file of the worksite, chooses the working CRS and reads the
@@ -113,7 +112,7 @@ func (w *Worksite) Check(ctx context.Context) (*Checked, error) {
 		if err != nil {
 			return nil, surveyError(ctx, err)
 		}
-		c.Files = append(c.Files, CheckedFile{Path: s.Path, Format: h.Format, Points: h.Points, Notes: h.Notes})
+		c.Files = append(c.Files, CheckedFile{Path: s.Path, Format: h.Format, Points: h.Points})
 		if err := ctx.Err(); err != nil {
 			return nil, err
 		}
