@@ -43,6 +43,14 @@ static void collect(CPLErr class, CPLErrorNum number, const char *text) {
 	lw_note(log, text);
 }
 
+// PROJ's own contexts, as libgeotiff makes them, would write to standard error.
+// What they say goes to the collector of the call that they serve instead. It is
+// a warning: whether the call failed is what the call itself says.
+static void collect_default(void *user, int level, const char *text) {
+	(void)user;
+	if (level == PJ_LOG_ERROR) CPLError(CE_Warning, CPLE_AppDefined, "%s", text);
+}
+
 void lw_log_free(lw_log *log) {
 	free(log->text);
 	log->text = NULL;
@@ -82,6 +90,7 @@ static void start(void) {
 	CPLPushErrorHandler(CPLQuietErrorHandler);
 	CPLSetConfigOption("GDAL_VRT_ENABLE_PYTHON", "NO");
 	OSRSetPROJEnableNetwork(0);
+	proj_log_func(NULL, NULL, collect_default); // new contexts are copies of the default one
 	// Blocks are read once and in order; by default the cache would keep a
 	// twentieth of the machine's memory of them.
 	if (!CPLGetConfigOption("GDAL_CACHEMAX", NULL)) GDALSetCacheMax64(64 << 20);

@@ -103,7 +103,7 @@ func TestNothingLeaks(t *testing.T) {
 			if _, err := UnionPolygons(square(0, 0, 1)); err != nil {
 				t.Fatal(err)
 			}
-			if _, err := FromGeoTIFFKeys([]uint16{1, 1, 0, 1, 3072, 0, 1, 32633}, nil, ""); err != nil {
+			if _, _, err := FromGeoTIFFKeys([]uint16{1, 1, 0, 1, 3072, 0, 1, 32633}, nil, ""); err != nil {
 				t.Fatal(err)
 			}
 		}

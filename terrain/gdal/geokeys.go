@@ -9,7 +9,9 @@ import "C"
 
 import (
 	"encoding/binary"
+	"errors"
 	"math"
+	"regexp"
 	"unsafe"
 
 	"ledgework/terrain"
@@ -18,21 +20,33 @@ import (
 // FromGeoTIFFKeys returns the WKT of the CRS that GeoTIFF keys describe, as LAS
 // files carry them: dir is the GeoKeyDirectory (tag 34735), doubles the
 // GeoDoubleParams (34736) and ascii the GeoAsciiParams (34737), of which the
-// last two may be empty. A vertical system among the keys is kept. GDAL itself
-// reads them, from a TIFF file of one pixel in memory.
-func FromGeoTIFFKeys(dir []uint16, doubles []float64, ascii string) (wkt string, err error) {
+// last two may be empty. A vertical system among the keys is kept. Warnings are
+// what the libraries found odd about keys that they understood, in one line. GDAL
+// itself reads the keys, from a TIFF file of one pixel in memory.
+func FromGeoTIFFKeys(dir []uint16, doubles []float64, ascii string) (wkt, warnings string, err error) {
 	const place = "GeoTIFF keys"
 	if len(dir) < 4 {
-		return "", &terrain.FormatError{Format: "gdal", Place: place, Reason: "the key directory is shorter than its header"}
+		return "", "", &terrain.FormatError{Format: "gdal", Place: place, Reason: "the key directory is shorter than its header"}
 	}
 	tiff := keyTIFF(dir, doubles, ascii)
 	var log C.lw_log
 	text := C.lw_crs_of_tiff((*C.uint8_t)(unsafe.Pointer(unsafe.SliceData(tiff))), C.size_t(len(tiff)), &log)
+	warnings = withoutTIFFName(takeLog(&log))
 	if text == nil {
-		return "", failure(&log, place, "they describe no coordinate system")
+		e := &terrain.FormatError{Format: "gdal", Place: place, Reason: "they describe no coordinate system"}
+		if warnings != "" {
+			e.Err = errors.New(warnings)
+		}
+		return "", "", e
 	}
-	takeLog(&log)
-	return takeString(text), nil
+	return takeString(text), warnings, nil
+}
+
+// withoutTIFFName takes the name of the file in memory out of messages: nobody
+// knows it, and its number differs from run to run.
+func withoutTIFFName(messages string) string {
+	name := regexp.MustCompile("[`']?(/vsimem/)?ledgework-keys-[0-9]+(\\.tif)?'?:? ?")
+	return name.ReplaceAllString(messages, "")
 }
 
 // keyTIFF is a little-endian TIFF 6.0 file of one grey pixel with the GeoTIFF

@@ -1,6 +1,10 @@
 package gdal
 
 import (
+	"bytes"
+	"fmt"
+	"os"
+	"os/exec"
 	"strings"
 	"sync"
 	"testing"
@@ -32,7 +36,7 @@ func TestFromGeoTIFFKeys(t *testing.T) {
 	}
 	for _, tt := range tests {
 		t.Run(tt.name, func(t *testing.T) {
-			wkt, err := FromGeoTIFFKeys(tt.dir, tt.doubles, tt.ascii)
+			wkt, _, err := FromGeoTIFFKeys(tt.dir, tt.doubles, tt.ascii)
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -71,7 +75,7 @@ func TestFromGeoTIFFKeysRefuses(t *testing.T) {
 	}
 	for _, tt := range tests {
 		t.Run(tt.name, func(t *testing.T) {
-			wkt, err := FromGeoTIFFKeys(tt.dir, nil, "")
+			wkt, _, err := FromGeoTIFFKeys(tt.dir, nil, "")
 			if err == nil {
 				t.Logf("GDAL makes this of it: %s", wkt)
 				if tt.want != "" {
@@ -86,12 +90,60 @@ func TestFromGeoTIFFKeysRefuses(t *testing.T) {
 	}
 }
 
+// A unit that no table has: PROJ's contexts of libgeotiff's making used to write
+// to standard error about it. Whatever is said comes back, without the running
+// number of the file in memory.
+func TestFromGeoTIFFKeysSaysWhatIsOdd(t *testing.T) {
+	dir := []uint16{1, 1, 0, 4, 1024, 0, 1, 1, 1025, 0, 1, 1, 3072, 0, 1, 32767, 3076, 0, 1, 12345}
+	if os.Getenv("LEDGEWORK_TEST_STDERR") != "" {
+		_, _, _ = FromGeoTIFFKeys(dir, nil, "")
+		return
+	}
+	program, err := os.Executable()
+	if err != nil {
+		t.Fatal(err)
+	}
+	var stderr bytes.Buffer
+	cmd := exec.Command(program, "-test.run=^"+t.Name()+"$")
+	cmd.Env = append(os.Environ(), "LEDGEWORK_TEST_STDERR=1", "GOCOVERDIR="+t.TempDir())
+	cmd.Stderr = &stderr
+	if err := cmd.Run(); err != nil || stderr.Len() > 0 {
+		t.Errorf("%v, and on standard error: %q", err, stderr.String())
+	}
+
+	say := func() string {
+		wkt, warnings, err := FromGeoTIFFKeys(dir, nil, "")
+		return fmt.Sprintf("%s / %s / %v", wkt, warnings, err)
+	}
+	first := say()
+	if second := say(); second != first {
+		t.Errorf("not the same twice:\n%s\n%s", first, second)
+	}
+	if !strings.Contains(first, "unit of measure not found") || strings.Contains(first, "vsimem") || strings.Contains(first, "ledgework-keys") {
+		t.Errorf("said: %s", first)
+	}
+}
+
+func TestWithoutTIFFName(t *testing.T) {
+	tests := []struct{ in, want string }{
+		{"/vsimem/ledgework-keys-12.tif: broken", "broken"},
+		{"a; ledgework-keys-3.tif:TIFFReadDirectory: odd; b", "a; TIFFReadDirectory: odd; b"},
+		{"`/vsimem/ledgework-keys-7.tif' not recognized", "not recognized"},
+		{"unit of measure not found", "unit of measure not found"},
+	}
+	for _, tt := range tests {
+		if got := withoutTIFFName(tt.in); got != tt.want {
+			t.Errorf("%q gives %q, want %q", tt.in, got, tt.want)
+		}
+	}
+}
+
 func TestFromGeoTIFFKeysInParallel(t *testing.T) {
 	var wg sync.WaitGroup
 	for g := range uint16(8) {
 		wg.Go(func() {
 			for range 10 {
-				wkt, err := FromGeoTIFFKeys([]uint16{1, 1, 0, 2, 1024, 0, 1, 1, 3072, 0, 1, 32631 + g}, nil, "")
+				wkt, _, err := FromGeoTIFFKeys([]uint16{1, 1, 0, 2, 1024, 0, 1, 1, 3072, 0, 1, 32631 + g}, nil, "")
 				if err != nil {
 					t.Error(err)
 					return
@@ -116,7 +168,7 @@ func FuzzFromGeoTIFFKeys(f *testing.F) {
 		for i := range dir {
 			dir[i] = uint16(b[2*i]) | uint16(b[2*i+1])<<8
 		}
-		wkt, err := FromGeoTIFFKeys(dir, []float64{v, v, v}, ascii)
+		wkt, _, err := FromGeoTIFFKeys(dir, []float64{v, v, v}, ascii)
 		if (wkt == "") != (err != nil) {
 			t.Errorf("WKT %q with error %v", wkt, err)
 		}

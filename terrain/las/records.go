@@ -183,7 +183,7 @@ func (k *geoKeys) valid() bool {
 // between WKT and GeoTIFF keys where a file has both (section 2.4, table 4);
 // where it has one, that one is used whatever the bit says. fromKeys turns
 // GeoTIFF keys into WKT.
-func (t *records) crs(h *rawHeader, to *terrain.Header, fromKeys func(dir []uint16, doubles []float64, ascii string) (string, error)) {
+func (t *records) crs(h *rawHeader, to *terrain.Header, fromKeys func(dir []uint16, doubles []float64, ascii string) (wkt, warnings string, err error)) {
 	preferWKT := h.encoding&wktBit != 0
 	if t.wkt != "" && (preferWKT || len(t.keys.dir) == 0) {
 		to.CRS = t.wkt
@@ -193,7 +193,10 @@ func (t *records) crs(h *rawHeader, to *terrain.Header, fromKeys func(dir []uint
 		if !t.keys.valid() {
 			t.note("the GeoTIFF keys are damaged")
 		} else if t.keys.dir[3] > 0 {
-			wkt, err := fromKeys(t.keys.dir, t.keys.doubles, t.keys.ascii)
+			wkt, warnings, err := fromKeys(t.keys.dir, t.keys.doubles, t.keys.ascii)
+			if warnings != "" {
+				t.note("the GeoTIFF keys: %s", warnings)
+			}
 			if err == nil && wkt != "" {
 				to.CRS = wkt
 				return

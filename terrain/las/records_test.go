@@ -95,20 +95,23 @@ func TestExtendedRecordsThatAreNone(t *testing.T) {
 
 func TestWhichCRS(t *testing.T) {
 	const keysWKT = `LOCAL_CS["from keys"]`
-	fromKeys := func(dir []uint16, doubles []float64, ascii string) (string, error) {
+	fromKeys := func(dir []uint16, doubles []float64, ascii string) (string, string, error) {
 		if len(dir) != 16 || len(doubles) != 2 || doubles[1] != 2 || ascii != "site|" {
 			t.Errorf("got keys %v %v %q", dir, doubles, ascii)
 		}
-		return keysWKT, nil
+		return keysWKT, "", nil
 	}
-	failing := func([]uint16, []float64, string) (string, error) { return "", errors.New("no such ellipsoid") }
-	nothing := func([]uint16, []float64, string) (string, error) { return "", nil }
+	odd := func([]uint16, []float64, string) (string, string, error) { return keysWKT, "no such unit", nil }
+	failing := func([]uint16, []float64, string) (string, string, error) {
+		return "", "", errors.New("no such ellipsoid")
+	}
+	nothing := func([]uint16, []float64, string) (string, string, error) { return "", "", nil }
 	wkt := vlr{projectionUser, recordWKT, []byte(testWKT)}
 	for _, c := range []struct {
 		name     string
 		encoding uint16
 		vlrs     []vlr
-		fromKeys func([]uint16, []float64, string) (string, error)
+		fromKeys func([]uint16, []float64, string) (string, string, error)
 		want     string
 		notes    int
 	}{
@@ -116,6 +119,7 @@ func TestWhichCRS(t *testing.T) {
 		{"both, no WKT bit", 0, append(utm33(), wkt), fromKeys, keysWKT, 0},
 		{"keys only, WKT bit", wktBit, utm33(), fromKeys, keysWKT, 0},
 		{"WKT only, no bit", 0, []vlr{wkt}, fromKeys, testWKT, 0},
+		{"odd keys", 0, utm33(), odd, keysWKT, 1},
 		{"bad keys, WKT", 0, append(utm33(), wkt), failing, testWKT, 1},
 		{"bad keys", 0, utm33(), failing, "", 1},
 		{"keys of nothing", 0, utm33(), nothing, "", 1},
