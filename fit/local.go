@@ -143,25 +143,33 @@ func inParallel(ctx context.Context, n, workers int, newWorker func() func(i int
 }
 
 // member is one voxel of a tile and its halo: its mean relative to the tile's
-// centre in metres and its sums relative to that centre in quanta.
+// centre in metres, on the axes of the tile's rows, and its sums relative to
+// that centre in quanta.
 type member struct {
-	x, y, z float64
-	i       int32
-	sums    terrain.Moments
+	along, across, through float64
+	sums                   terrain.Moments
 }
 
 // localWorker holds what one goroutine reuses from tile to tile.
+//
+// Gathered members are bucketed into columns of cells: square prisms through
+// the tile along the axis in which it is thinnest, so that a surface puts few
+// members into each. Columns that follow each other along a second axis follow
+// each other in memory, and the members within reach of a query are one run of
+// them for each step across.
 type localWorker struct {
 	at      *terrain.Voxels
 	members *terrain.Index
 	out     *LocalPlanes
 	radius  float64
 
+	found    []int32 // indices of the members
 	gathered []member
-	rows     []int32 // start of row (j, k) in gathered; one more at the end
-	cursor   []int32
-	lo, hi   terrain.Cell // gathered box, member cells
-	nj       int32
+	starts   []int32 // of each column in gathered, and one more at the end
+
+	axes                  [3]int  // along, across, through: 0 east, 1 north, 2 up
+	lowAlong, lowAcross   float64 // lower faces of the first column, relative to the centre
+	columnsAlong, nAcross int
 }
 
 func (w *localWorker) tile(queries []int32) error {
@@ -169,17 +177,18 @@ func (w *localWorker) tile(queries []int32) error {
 	if err != nil {
 		return err
 	}
-	var row terrain.Cell
-	for n, q := range queries {
+	for _, q := range queries {
 		p := r3.Sub(w.at.Mean(int(q)), centre)
-		if c := w.at.Cells[q]; n == 0 || c.J != row.J || c.K != row.K {
-			row = c
-			w.resetCursors()
-		}
-		sum, count := w.sum(p, centre)
-		w.finish(int(q), p, centre, &sum, count)
+		sum, count := w.sum(w.turned(p))
+		w.finish(int(q), p, &sum, count)
 	}
 	return nil
+}
+
+// turned returns p on the axes along, across and through.
+func (w *localWorker) turned(p r3.Vec) [3]float64 {
+	v := [3]float64{p.X, p.Y, p.Z}
+	return [3]float64{v[w.axes[0]], v[w.axes[1]], v[w.axes[2]]}
 }
 
 // gather copies the members that can be within reach of the queries, shifted to
@@ -194,95 +203,121 @@ func (w *localWorker) gather(queries []int32) (r3.Vec, error) {
 	v := w.members.Voxels()
 	l := v.Lattice
 	reach := r3.Vec{X: w.radius, Y: w.radius, Z: w.radius}
-	lower := r3.Vec{X: box.Min[0], Y: box.Min[1], Z: box.Min[2]}
-	upper := r3.Vec{X: box.Max[0], Y: box.Max[1], Z: box.Max[2]}
-	w.lo, w.hi = l.CellOf(r3.Sub(lower, reach)), l.CellOf(r3.Add(upper, reach))
-	mid := terrain.Cell{I: w.lo.I + (w.hi.I-w.lo.I)/2, J: w.lo.J + (w.hi.J-w.lo.J)/2, K: w.lo.K + (w.hi.K-w.lo.K)/2}
+	lo := l.CellOf(r3.Sub(r3.Vec{X: box.Min[0], Y: box.Min[1], Z: box.Min[2]}, reach))
+	hi := l.CellOf(r3.Add(r3.Vec{X: box.Max[0], Y: box.Max[1], Z: box.Max[2]}, reach))
+	mid := terrain.Cell{I: lo.I + (hi.I-lo.I)/2, J: lo.J + (hi.J-lo.J)/2, K: lo.K + (hi.K-lo.K)/2}
 	centre := l.Centre(mid)
-	w.nj = w.hi.J - w.lo.J + 1
-	nk := w.hi.K - w.lo.K + 1
-	w.gathered = w.gathered[:0]
-	w.rows = slices.Grow(w.rows[:0], int(w.nj*nk)+1)[:w.nj*nk+1]
-	clear(w.rows)
 
-	half := int64(max(w.hi.I-mid.I, w.hi.J-mid.J, w.hi.K-mid.K)+1) * l.Quanta()
-	room := int64(math.MaxInt64/2) / half / half // points that fit exact sums
-	filled := int32(0)
-	w.members.Rows(w.lo, w.hi, func(start, end int) {
-		c := v.Cells[start]
-		at := (c.K-w.lo.K)*w.nj + c.J - w.lo.J
-		for ; filled <= at; filled++ {
-			w.rows[filled] = int32(len(w.gathered))
-		}
+	w.found = w.found[:0]
+	var points int64
+	w.members.Rows(lo, hi, func(start, end int) {
 		for i := start; i < end; i++ {
-			c := v.Cells[i]
-			m := r3.Sub(w.members.Mean(i), centre)
-			room -= v.Moments[i].N
-			w.gathered = append(w.gathered, member{m.X, m.Y, m.Z, c.I,
-				v.Moments[i].Shifted(int64(c.I-mid.I)*l.Quanta(), int64(c.J-mid.J)*l.Quanta(), int64(c.K-mid.K)*l.Quanta())})
+			w.found = append(w.found, int32(i))
+			points += v.Moments[i].N
 		}
 	})
-	if room < 0 {
+	far := int64(max(hi.I-mid.I, hi.J-mid.J, hi.K-mid.K)+1) * l.Quanta()
+	if points > int64(math.MaxInt64/2)/far/far {
 		return centre, ErrCrowded
 	}
-	for ; int(filled) < len(w.rows); filled++ {
-		w.rows[filled] = int32(len(w.gathered))
+	w.layOut(lo, hi, centre)
+	// The starts count up while columns fill, and are each one's end after.
+	for n := len(w.found) - 1; n >= 0; n-- {
+		c := v.Cells[w.found[n]]
+		at := &w.starts[w.column(c, lo)]
+		*at--
+		p := w.turned(r3.Sub(w.members.Mean(int(w.found[n])), centre))
+		w.gathered[*at] = member{p[0], p[1], p[2], v.Moments[w.found[n]].Shifted(
+			int64(c.I-mid.I)*l.Quanta(), int64(c.J-mid.J)*l.Quanta(), int64(c.K-mid.K)*l.Quanta())}
 	}
 	return centre, nil
 }
 
-func (w *localWorker) resetCursors() {
-	n := len(w.rows) - 1
-	w.cursor = slices.Grow(w.cursor[:0], n)[:n]
-	copy(w.cursor, w.rows)
+// layOut chooses the axes for the members found, and counts them so that starts
+// holds the end of each column.
+func (w *localWorker) layOut(lo, hi terrain.Cell, centre r3.Vec) {
+	v := w.members.Voxels()
+	var sum, squares [3]float64
+	for _, i := range w.found {
+		c := v.Cells[i]
+		for a, d := range [3]float64{float64(c.I - lo.I), float64(c.J - lo.J), float64(c.K - lo.K)} {
+			sum[a] += d
+			squares[a] += d * d
+		}
+	}
+	n := max(1, float64(len(w.found)))
+	thin := 0
+	variance := func(a int) float64 { return squares[a] - sum[a]*sum[a]/n }
+	for a := 1; a < 3; a++ {
+		if variance(a) < variance(thin) {
+			thin = a
+		}
+	}
+	w.axes = [3]int{(thin + 1) % 3, (thin + 2) % 3, thin}
+	size := [3]int{int(hi.I-lo.I) + 1, int(hi.J-lo.J) + 1, int(hi.K-lo.K) + 1}
+	w.columnsAlong, w.nAcross = size[w.axes[0]], size[w.axes[1]]
+	low := w.turned(r3.Sub(v.Lattice.Corner(lo), centre))
+	w.lowAlong, w.lowAcross = low[0], low[1]
+
+	w.starts = slices.Grow(w.starts[:0], w.columnsAlong*w.nAcross+1)[:w.columnsAlong*w.nAcross+1]
+	clear(w.starts)
+	for _, i := range w.found {
+		w.starts[w.column(v.Cells[i], lo)]++
+	}
+	end := int32(0)
+	for i := range w.starts {
+		end += w.starts[i]
+		w.starts[i] = end
+	}
+	w.gathered = slices.Grow(w.gathered[:0], len(w.found))[:len(w.found)]
+}
+
+// column is the number of the column that holds cell c.
+func (w *localWorker) column(c, lo terrain.Cell) int {
+	d := [3]int{int(c.I - lo.I), int(c.J - lo.J), int(c.K - lo.K)}
+	return d[w.axes[1]]*w.columnsAlong + d[w.axes[0]]
 }
 
 // sum adds up the members within the radius of p, which is relative to the
-// tile's centre. Queries of one row must come in order: cursors only advance.
-func (w *localWorker) sum(p, centre r3.Vec) (sum terrain.Moments, count int32) {
-	l := w.members.Voxels().Lattice
-	abs := r3.Add(p, centre)
-	reach := r3.Vec{X: w.radius, Y: w.radius, Z: w.radius}
-	lo, hi := l.CellOf(r3.Sub(abs, reach)), l.CellOf(r3.Add(abs, reach))
-	g, r2 := l.SpacingM(), w.radius*w.radius
-	corner := r3.Sub(l.Corner(lo), abs)
-	for k := lo.K; k <= hi.K; k++ {
-		dz := slabGap(corner.Z+g*float64(k-lo.K), g)
-		left := r2 - dz*dz
-		for j := lo.J; j <= hi.J; j++ {
-			dy := slabGap(corner.Y+g*float64(j-lo.J), g)
-			if dy*dy > left {
-				continue
-			}
-			row := (k-w.lo.K)*w.nj + j - w.lo.J
-			at, end := w.cursor[row], w.rows[row+1]
-			for at < end && w.gathered[at].i < lo.I {
-				at++
-			}
-			w.cursor[row] = at
-			for ; at < end; at++ {
-				m := &w.gathered[at]
-				if m.i > hi.I {
-					break
-				}
-				dx, dy, dz := m.x-p.X, m.y-p.Y, m.z-p.Z
-				if dx*dx+dy*dy+dz*dz <= r2 {
-					sum.Add(&m.sums)
-					count++
-				}
+// tile's centre and on its axes.
+func (w *localWorker) sum(p [3]float64) (sum terrain.Moments, count int32) {
+	g := w.members.Voxels().Lattice.SpacingM()
+	cells := 1 / g
+	r2 := w.radius * w.radius
+	first := max(0, int((p[1]-w.radius-w.lowAcross)*cells-slackCells))
+	last := min(w.nAcross-1, int((p[1]+w.radius-w.lowAcross)*cells+slackCells))
+	for row := first; row <= last; row++ {
+		// The least distance of p from the row bounds how far along it the
+		// sphere reaches.
+		d := max(math.Abs(w.lowAcross+(float64(row)+0.5)*g-p[1])-(0.5+slackCells)*g, 0)
+		left := r2 - d*d
+		if left < 0 {
+			continue
+		}
+		half := math.Sqrt(left)
+		from := max(0, int((p[0]-half-w.lowAlong)*cells-slackCells))
+		to := min(w.columnsAlong, int((p[0]+half-w.lowAlong)*cells+slackCells)+1)
+		if from >= to {
+			continue
+		}
+		run := w.gathered[w.starts[row*w.columnsAlong+from]:w.starts[row*w.columnsAlong+to]]
+		for i := range run {
+			m := &run[i]
+			dx, dy, dz := m.along-p[0], m.across-p[1], m.through-p[2]
+			if dx*dx+dy*dy+dz*dz <= r2 {
+				sum.Add(&m.sums)
+				count++
 			}
 		}
 	}
 	return sum, count
 }
 
-// slabGap is the distance of 0 from the interval [lo, lo+g], less the rounding
-// of means to quanta.
-func slabGap(lo, g float64) float64 {
-	return max(0, max(lo, -lo-g)-1.0/terrain.QuantaPerMetre)
-}
+// slackCells widens the search for the rounding of means to quanta, which is at
+// most 2 % of a cell, and of the arithmetic here.
+const slackCells = 0.05
 
-func (w *localWorker) finish(q int, p, centre r3.Vec, sum *terrain.Moments, count int32) {
+func (w *localWorker) finish(q int, p r3.Vec, sum *terrain.Moments, count int32) {
 	o := w.out
 	o.Points[q], o.Voxels[q] = sum.N, count
 	if count < minPlaneVoxels {
