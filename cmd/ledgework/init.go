@@ -99,7 +99,7 @@ func writeFile(path string, text []byte) error {
 	if err != nil {
 		return usageError{fmt.Errorf("cannot write %s: %w", path, cause(err))}
 	}
-	defer os.Remove(temp.Name()) // fails once it was renamed
+	defer func() { _ = os.Remove(temp.Name()) }() // it is gone once it was renamed
 	_, err = temp.Write(text)
 	err = errors.Join(err, temp.Chmod(0o644), temp.Close())
 	if err == nil {

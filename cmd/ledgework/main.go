@@ -41,7 +41,7 @@ func run(ctx context.Context, args []string, term *terminal) (code int) {
 			term.abandon()
 			code = report(term, g, fmt.Errorf("internal error: %v", p))
 			fmt.Fprintln(term.err, "ledgework: this is a defect in ledgework; please report it with the command, the survey's format and the lines below")
-			term.err.Write(debug.Stack())
+			fmt.Fprintf(term.err, "%s", debug.Stack())
 		}
 	}()
 	root := newRootCommand(g, term)

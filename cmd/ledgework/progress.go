@@ -32,7 +32,7 @@ func (b *bars) Begin(stage string, total int64, unit worksite.Unit) {
 	name := decor.Name(stage, decor.WC{W: 18, C: decor.DindentRight})
 	eta := decor.OnComplete(decor.AverageETA(decor.ET_STYLE_GO, decor.WC{W: 7}), "done")
 	if total <= 0 {
-		b.bar = b.p.New(0, mpb.SpinnerStyle(), mpb.PrependDecorators(name), mpb.AppendDecorators(decor.Elapsed(decor.ET_STYLE_GO)))
+		b.bar = b.p.New(0, mpb.SpinnerStyle().PositionLeft(), mpb.BarFillerClearOnComplete(), mpb.PrependDecorators(name), mpb.AppendDecorators(decor.OnComplete(decor.Elapsed(decor.ET_STYLE_GO, decor.WC{W: 31}), "                            done")))
 		return
 	}
 	rate := decor.AverageSpeed(0, "%.0f "+string(unit)+"/s", decor.WC{W: 18})

@@ -5,6 +5,7 @@ import (
 	"context"
 	"crypto/sha256"
 	"encoding/hex"
+	"errors"
 	"fmt"
 	"io"
 	"os"
@@ -92,7 +93,7 @@ func checksum(ctx context.Context, path string) (string, error) {
 		if err := ctx.Err(); err != nil {
 			return "", err
 		}
-		if _, err := io.CopyN(sum, f, step); err == io.EOF {
+		if _, err := io.CopyN(sum, f, step); errors.Is(err, io.EOF) {
 			return hex.EncodeToString(sum.Sum(nil)), nil
 		} else if err != nil {
 			return "", err

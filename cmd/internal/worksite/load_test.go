@@ -91,7 +91,7 @@ func TestParseErrors(t *testing.T) {
 		{"unknown key with a slip", surveys + "exclude_clases: [1]\n", `w.yaml:2:1: unknown key "exclude_clases"; did you mean "exclude_classes"?`},
 		{"unknown key, nothing near", surveys + "colour_scheme: dark\n", `w.yaml:2:1: unknown key "colour_scheme"; 'ledgework init' writes a file with every key`},
 		{"unknown key in a survey", "surveys:\n  - files: [a]\n    sensor: [[1,2,3]]\n", `w.yaml:3:5: unknown key "sensor"; did you mean "sensors"?`},
-		{"unknown key in a limit", surveys + "platform: {profile: ledge, step_m: {alowed: 1}}\n", `w.yaml:2:37: unknown key "alowed"; did you mean "allowed"?`},
+		{"unknown key in a limit", surveys + "platform: {profile: ledge, step_m: {allowd: 1}}\n", `w.yaml:2:37: unknown key "allowd"; did you mean "allowed"?`},
 		{"unknown obstacle key", surveys + "obstacles:\n  bulge_height: 1\n", `w.yaml:3:3: unknown key "bulge_height"; did you mean "bulge_height_m"?`},
 		{"key twice", surveys + "site: a\nsite: b\n", `w.yaml:3:1: mapping key "site" already defined at [2:1]; …`},
 		{"open bracket", "surveys: [\n", "w.yaml:1:10: sequence end token ']' not found; …"},
