@@ -120,7 +120,7 @@ func TestGeoJSONValues(t *testing.T) {
 		t.Errorf("zone has %d rings, want an outer one and a hole", got)
 	}
 	_, doc = write(t, tables[3], p)
-	if site := doc.Features[0].Properties; site["crs"] != "EPSG:32633" || site["points"] != float64(s.Voxels.Points()) || site["vertical_datum"] != nil {
+	if site := doc.Features[0].Properties; site["crs"] != "EPSG:32633" || site["points"] != float64(s.Voxels.Points()) || site["vertical_datum"] != "unknown" {
 		t.Errorf("crs %v, points %v, vertical datum %v", site["crs"], site["points"], site["vertical_datum"])
 	}
 }

@@ -30,7 +30,7 @@ type Record struct {
 
 	Site       string           `json:"site"`
 	CRS        CRS              `json:"crs"`
-	Frame      string           `json:"frame,omitempty"`
+	Frame      string           `json:"frame,omitempty"` // see Site.Frame
 	SpacingM   float64          `json:"spacing_m"`
 	Inputs     []Input          `json:"inputs"`
 	Parameters any              `json:"parameters"` // the worksite with every default filled in

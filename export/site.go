@@ -1,7 +1,9 @@
 package export
 
 import (
+	"cmp"
 	"errors"
+	"fmt"
 
 	"ledgework/hazards"
 	"ledgework/terrain"
@@ -30,18 +32,30 @@ func (c CRS) Local() bool { return c.WKT == "" }
 // A Site is what one run found, with what is needed to write it. Writers only
 // read it.
 type Site struct {
-	Name     string
-	CRS      CRS
-	Frame    string   // how coordinates were brought into the working CRS, for the reader
-	Dates    []string // survey dates, YYYY-MM-DD
-	Voxels   *terrain.Voxels
-	Findings hazards.Findings
-	Profile  hazards.Profile
+	Name        string
+	CRS         CRS
+	Conversions string   // what was assumed, converted or left undone on the way into the working CRS, empty if nothing
+	Dates       []string // survey dates, YYYY-MM-DD
+	Voxels      *terrain.Voxels
+	Findings    hazards.Findings
+	Profile     hazards.Profile
 
 	// InflatedByM is the distance in metres by which the Inflated ellipsoids
 	// were grown.
 	InflatedByM float64
 }
+
+// Frame says what the coordinates of s mean: axes, units, what heights refer to,
+// and the lattice of the voxels.
+func (s *Site) Frame() string {
+	return fmt.Sprintf("axes east, north and height (up) of the working CRS (%s), metres; heights are as in the survey, vertical datum: %s; "+
+		"the third coordinate of GeoJSON is that height, where RFC 7946 means height above the WGS 84 ellipsoid: no geoid is applied; "+
+		"a voxel's cell index is floor(coordinate / %g m) on each axis, from the origin 0, 0, 0 of the working CRS",
+		cmp.Or(s.CRS.Name, "local coordinates"), s.CRS.verticalDatum(), s.Voxels.Lattice.SpacingM())
+}
+
+// verticalDatum is the name of what heights refer to, or "unknown".
+func (c CRS) verticalDatum() string { return cmp.Or(c.Vertical, "unknown") }
 
 // A Projector turns working coordinates into WGS 84 (OGC:CRS84).
 type Projector interface {

@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"slices"
+	"strings"
 	"testing"
 
 	"gonum.org/v1/gonum/spatial/r3"
@@ -110,5 +111,22 @@ func testSite(t testing.TB, g, e, north float64, n int32) *Site {
 			},
 			Zones: []hazards.Zone{zone},
 		},
+	}
+}
+
+// Whoever reads only the layer learns what heights are, and on which lattice
+// voxels lie, whether or not the survey says what its heights refer to.
+func TestSiteFrame(t *testing.T) {
+	s := &Site{Voxels: voxelsAt(t, 0.05, []terrain.Cell{{}})}
+	for _, want := range []string{"(local coordinates)", "vertical datum: unknown;", "no geoid is applied", "floor(coordinate / 0.05 m)"} {
+		if got := s.Frame(); !strings.Contains(got, want) {
+			t.Errorf("%q lacks %q", got, want)
+		}
+	}
+	s.CRS = CRS{Name: "ETRS89 / UTM zone 33N", Vertical: "NN2000 height"}
+	for _, want := range []string{"(ETRS89 / UTM zone 33N)", "vertical datum: NN2000 height;"} {
+		if got := s.Frame(); !strings.Contains(got, want) {
+			t.Errorf("%q lacks %q", got, want)
+		}
 	}
 }

@@ -40,14 +40,14 @@ const rowGroupRows = 1 << 18
 
 // VoxelMeta says where voxels come from, as far as a later run needs it.
 type VoxelMeta struct {
-	Site      string           `json:"site"`
-	CRS       CRS              `json:"crs"`
-	Frame     string           `json:"frame,omitempty"`
-	Dates     []string         `json:"dates,omitempty"`
-	Sensors   [][3]float64     `json:"sensors,omitempty"`    // scanner positions in the working CRS, m
-	AccuracyM float64          `json:"accuracy_m,omitempty"` // 1 sigma of a point, 0 if unknown
-	Sources   []Input          `json:"sources"`
-	Counts    map[string]int64 `json:"counts,omitempty"` // of points read and dropped, by reason
+	Site        string           `json:"site"`
+	CRS         CRS              `json:"crs"`
+	Conversions string           `json:"conversions,omitempty"` // see Site
+	Dates       []string         `json:"dates,omitempty"`
+	Sensors     [][3]float64     `json:"sensors,omitempty"`    // scanner positions in the working CRS, m
+	AccuracyM   float64          `json:"accuracy_m,omitempty"` // 1 sigma of a point, 0 if unknown
+	Sources     []Input          `json:"sources"`
+	Counts      map[string]int64 `json:"counts,omitempty"` // of points read and dropped, by reason
 }
 
 // A voxelColumn is a column of integers with its place in terrain.Voxels.

@@ -199,5 +199,5 @@ func (r *run) describe(frame *survey.Frame) {
 	if len(m.Dates) > 1 {
 		r.warn(fmt.Sprintf("surveys of %d dates were put together as if taken at one time", len(m.Dates)))
 	}
-	m.Frame = strings.Join(frame.Notes, "; ")
+	m.Conversions = strings.Join(frame.Notes, "; ")
 }

@@ -15,7 +15,7 @@ import (
 // write puts layers, voxels and record into the folder and gives it its name.
 func (r *run) write(ctx context.Context, folder *export.Folder) error {
 	site := &export.Site{
-		Name: r.Site, CRS: r.ground.meta.CRS, Frame: r.ground.meta.Frame, Dates: r.ground.meta.Dates,
+		Name: r.Site, CRS: r.ground.meta.CRS, Conversions: r.ground.meta.Conversions, Dates: r.ground.meta.Dates,
 		Voxels: r.ground.voxels, Findings: r.findings, Profile: r.Platform.Profile,
 		InflatedByM: r.options.ClearanceM,
 	}
@@ -34,7 +34,7 @@ func (r *run) write(ctx context.Context, folder *export.Folder) error {
 		return err
 	}
 	err = folder.Write(export.RecordName, func(w io.Writer) error {
-		return export.WriteRecord(w, r.record(folder))
+		return export.WriteRecord(w, r.record(folder, site))
 	})
 	if err == nil {
 		err = ctx.Err()
@@ -63,7 +63,7 @@ func (r *run) writeLayers(folder *export.Folder, site *export.Site) error {
 }
 
 // record says how the run came about.
-func (r *run) record(folder *export.Folder) export.Record {
+func (r *run) record(folder *export.Folder, site *export.Site) export.Record {
 	res := r.result(folder.Target())
 	rec := export.Record{
 		Version: r.opts.Version, Command: "build",
@@ -71,7 +71,7 @@ func (r *run) record(folder *export.Folder) export.Record {
 		Outcome:  res.Outcome(),
 		Site:     r.Site,
 		CRS:      r.ground.meta.CRS,
-		Frame:    r.ground.meta.Frame,
+		Frame:    site.Frame(),
 		SpacingM: res.SpacingM,
 		Inputs:   r.ground.meta.Sources,
 		Parameters: parameters{
