@@ -62,14 +62,13 @@ func EigenSym3(c terrain.Covariance) (lambda [3]float64, axes [3]r3.Vec) {
 	} else {
 		lambda, axes = [3]float64{nn, low, high}, [3]r3.Vec{n, e, g}
 	}
-	// In a matrix that is isotropic but for rounding, n may be out of order.
-	switch {
-	case lambda[1] > lambda[2]:
-		lambda[1], lambda[2] = lambda[2], lambda[1]
-		axes[1], axes[2] = axes[2], r3.Scale(-1, axes[1])
-	case lambda[0] > lambda[1]:
-		lambda[0], lambda[1] = lambda[1], lambda[0]
-		axes[0], axes[1] = axes[1], r3.Scale(-1, axes[0])
+	// In a matrix that is isotropic but for rounding, n may be out of order, by
+	// one place or by two.
+	for _, i := range [3]int{0, 1, 0} {
+		if lambda[i] > lambda[i+1] {
+			lambda[i], lambda[i+1] = lambda[i+1], lambda[i]
+			axes[i], axes[i+1] = axes[i+1], r3.Scale(-1, axes[i])
+		}
 	}
 	for i := range lambda {
 		lambda[i] = max(lambda[i], 0)

@@ -119,6 +119,23 @@ func TestEigenSym3Accuracy(t *testing.T) {
 	}
 }
 
+// Where nothing but rounding tells the eigenvalues apart, any of them may come
+// out of the 2×2 problem and be the one that was set apart.
+func TestEigenSym3OrdersIsotropic(t *testing.T) {
+	rng := rand.New(rand.NewPCG(1, 1))
+	ulps := func() float64 { return float64(rng.IntN(7)-3) * epsilon }
+	for range 20000 {
+		c := terrain.Covariance{XX: 1 + ulps(), YY: 1 + ulps(), ZZ: 1 + ulps(), XY: ulps(), XZ: ulps(), YZ: ulps()}
+		lambda, axes := EigenSym3(c)
+		if !(lambda[0] <= lambda[1] && lambda[1] <= lambda[2]) {
+			t.Fatalf("%v: eigenvalues %v do not ascend", c, lambda)
+		}
+		if hand := r3.Dot(r3.Cross(axes[0], axes[1]), axes[2]); math.Abs(hand-1) > 1e-14 {
+			t.Fatalf("%v: axes %v have the triple product %g, want 1", c, axes, hand)
+		}
+	}
+}
+
 func TestEigenSym3Values(t *testing.T) {
 	tests := []struct {
 		name string
