@@ -51,7 +51,7 @@ func FitLocal(ctx context.Context, at *terrain.Voxels, members *terrain.Index, r
 	tiles := tilesOf(at, radiusM)
 	err := inParallel(ctx, len(tiles), workers, func() func(int) error {
 		w := &localWorker{at: at, members: members, out: out, radius: radiusM}
-		return func(i int) error { return w.tile(tiles[i]) }
+		return func(i int) error { return w.tile(ctx, tiles[i]) }
 	})
 	if err != nil {
 		return nil, err
@@ -172,12 +172,19 @@ type localWorker struct {
 	columnsAlong, nAcross int
 }
 
-func (w *localWorker) tile(queries []int32) error {
+// contextEvery is how many voxels are looked at between two looks at the
+// context: a tile of large neighbourhoods takes longer than a user waits.
+const contextEvery = 256
+
+func (w *localWorker) tile(ctx context.Context, queries []int32) error {
 	centre, err := w.gather(queries)
 	if err != nil {
 		return err
 	}
-	for _, q := range queries {
+	for n, q := range queries {
+		if n%contextEvery == contextEvery-1 && ctx.Err() != nil {
+			return ctx.Err()
+		}
 		p := r3.Sub(w.at.Mean(int(q)), centre)
 		sum, count := w.sum(w.turned(p))
 		w.finish(int(q), p, &sum, count)
@@ -209,15 +216,17 @@ func (w *localWorker) gather(queries []int32) (r3.Vec, error) {
 	centre := l.Centre(mid)
 
 	w.found = w.found[:0]
-	var points int64
+	far := int64(max(hi.I-mid.I, hi.J-mid.J, hi.K-mid.K)+1) * l.Quanta()
+	room := int64(math.MaxInt64/2) / far / far // points whose sums are exact
 	w.members.Rows(lo, hi, func(start, end int) {
 		for i := start; i < end; i++ {
 			w.found = append(w.found, int32(i))
-			points += v.Moments[i].N
+			if room >= 0 { // else it could wrap round
+				room -= v.Moments[i].N
+			}
 		}
 	})
-	far := int64(max(hi.I-mid.I, hi.J-mid.J, hi.K-mid.K)+1) * l.Quanta()
-	if points > int64(math.MaxInt64/2)/far/far {
+	if room < 0 {
 		return centre, ErrCrowded
 	}
 	w.layOut(lo, hi, centre)

@@ -191,11 +191,38 @@ func TestFitLocalStops(t *testing.T) {
 	}
 }
 
+// A tile with many neighbourhoods stops within it: its one tile was begun
+// before the context ended.
+func TestFitLocalStopsWithinTile(t *testing.T) {
+	v := sumPoints(t, 0.05, roughWall(20000, 3))
+	if n := len(tilesOf(v, 100)); n != 1 {
+		t.Fatalf("%d tiles, want 1", n)
+	}
+	out := &LocalPlanes{Normal: make([]r3.Vec, v.Len()), Offset: make([]float64, v.Len())}
+	out.Roughness, out.Variation, out.SigmaDeg = make([]float32, v.Len()), make([]float32, v.Len()), make([]float32, v.Len())
+	out.Points, out.Voxels = make([]int64, v.Len()), make([]int32, v.Len())
+	w := &localWorker{at: v, members: terrain.NewIndex(v), out: out, radius: 0.3}
+	ctx, cancel := context.WithCancel(context.Background())
+	cancel()
+	if err := w.tile(ctx, tilesOf(v, 100)[0]); !errors.Is(err, context.Canceled) {
+		t.Errorf("error %v, want canceled", err)
+	}
+	if last := v.Len() - 1; out.Voxels[last] != 0 {
+		t.Errorf("voxel %d was fitted after the context had ended", last)
+	}
+}
+
 func TestFitLocalCrowded(t *testing.T) {
-	v := sumPoints(t, 1, roughWall(2000, 4))
-	v.Moments[0].N = 1 << 50
-	if _, err := FitLocal(context.Background(), v, terrain.NewIndex(v), 5, 2); !errors.Is(err, ErrCrowded) {
-		t.Errorf("error %v, want ErrCrowded", err)
+	// The second is the most a damaged file could claim: the sum of all wraps
+	// round to a small number.
+	for _, n := range []int64{1 << 50, 1 << 62} {
+		v := sumPoints(t, 1, roughWall(2000, 4))
+		for i := range v.Moments[:4] {
+			v.Moments[i].N = n
+		}
+		if _, err := FitLocal(context.Background(), v, terrain.NewIndex(v), 5, 2); !errors.Is(err, ErrCrowded) {
+			t.Errorf("%d points: error %v, want ErrCrowded", n, err)
+		}
 	}
 }
 

@@ -64,8 +64,8 @@ func OrientCoarse(ctx context.Context, x *terrain.Index, planes *LocalPlanes, se
 	if fitted == 0 {
 		return 0, nil
 	}
-	reached := propagate(x, planes, known, decided, 0)
-	return 1 - float64(len(reached))/float64(fitted), ctx.Err()
+	reached, err := propagate(ctx, x, planes, known, decided, 0)
+	return 1 - float64(len(reached))/float64(fitted), err
 }
 
 // A piece is a smoothly connected set of voxels, turned to the side that its
@@ -87,7 +87,10 @@ func settle(ctx context.Context, x *terrain.Index, planes *LocalPlanes, known []
 			return nil, err
 		}
 		known[start] = true
-		voxels := propagate(x, planes, known, []int32{int32(start)}, pieceCosine)
+		voxels, err := propagate(ctx, x, planes, known, []int32{int32(start)}, pieceCosine)
+		if err != nil {
+			return nil, err
+		}
 		var votes float64
 		for _, i := range voxels {
 			votes += evidence(x, planes.Normal[i], int(i), sensors)
@@ -166,7 +169,9 @@ func OrientFrom(ctx context.Context, x *terrain.Index, planes, coarse *LocalPlan
 	if err := ctx.Err(); err != nil {
 		return err
 	}
-	propagate(x, planes, known, besideUnknown(x, planes, known), 0)
+	if _, err := propagate(ctx, x, planes, known, besideUnknown(x, planes, known), 0); err != nil {
+		return err
+	}
 	_, err := settle(ctx, x, planes, known, sensors)
 	return err
 }
@@ -208,7 +213,7 @@ func neighbours(x *terrain.Index, i int, f func(j int)) {
 // voxel connected to them, along the steps between most nearly parallel normals
 // first and none with a cosine below least, turning planes on the way. It
 // returns the seeds and all it reached.
-func propagate(x *terrain.Index, planes *LocalPlanes, known []bool, seeds []int32, least float64) []int32 {
+func propagate(ctx context.Context, x *terrain.Index, planes *LocalPlanes, known []bool, seeds []int32, least float64) ([]int32, error) {
 	var steps stepHeap
 	push := func(from int) {
 		neighbours(x, from, func(to int) {
@@ -233,9 +238,12 @@ func propagate(x *terrain.Index, planes *LocalPlanes, known []bool, seeds []int3
 			flip(planes, int(s.to))
 		}
 		reached = append(reached, s.to)
+		if len(reached)%contextEvery == 0 && ctx.Err() != nil {
+			return nil, ctx.Err()
+		}
 		push(int(s.to))
 	}
-	return reached
+	return reached, nil
 }
 
 // A step leads from a voxel whose side is known to a neighbour; cosine is that
