@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"sync"
+	"sync/atomic"
 
 	"gonum.org/v1/gonum/spatial/r3"
 )
@@ -34,6 +35,8 @@ type Accumulator struct {
 
 	once   sync.Once
 	origin Cell // brick that holds the first point
+
+	adders atomic.Int32 // made so far
 }
 
 // NewAccumulator returns an empty accumulator on lattice l that keeps the sums
@@ -63,6 +66,7 @@ type located struct {
 
 // NewAdder returns an Adder for one goroutine's use.
 func (a *Accumulator) NewAdder() *Adder {
+	a.adders.Add(1)
 	return &Adder{to: a, inverse: 1 / float64(a.lattice.edge)}
 }
 
@@ -171,8 +175,9 @@ func (a *Accumulator) cellOf(brick uint64, cell int) Cell {
 }
 
 // Voxels returns the sums in the order of Cell.Compare and leaves the
-// accumulator empty. No Adder may run meanwhile. The result does not depend on
-// the order in which points came.
+// accumulator empty. No Adder may run meanwhile. As many goroutines as there
+// are Adders share the work. The result does not depend on the order in which
+// points came.
 func (a *Accumulator) Voxels() *Voxels {
 	var total int
 	for i := range a.shards {
@@ -180,22 +185,41 @@ func (a *Accumulator) Voxels() *Voxels {
 	}
 	keys, refs := make([]uint64, 0, total), make([]uint32, 0, total)
 	for i := range a.shards {
-		a.shards[i].each(func(brick uint64, cell int, at uint32) {
+		s := &a.shards[i]
+		s.each(func(brick uint64, cell int, at uint32) {
 			keys = append(keys, sortKey(brick, cell))
 			refs = append(refs, at<<shardBits|uint32(i))
 		})
+		// What is not needed any more makes room: memory peaks here.
+		s.table, s.bricks = nil, arena[brick]{}
 	}
 	keys, refs = sortPairs(keys, refs)
 	v := &Voxels{Lattice: a.lattice, Cells: make([]Cell, total), Moments: make([]Moments, total)}
-	for i, key := range keys {
-		v.Cells[i] = a.cellOf(unsortKey(key))
-		v.Moments[i] = *a.shards[refs[i]&(shards-1)].moments.at(refs[i] >> shardBits)
+	a.share(total, func(lo, hi int) {
+		for i := lo; i < hi; i++ {
+			v.Cells[i] = a.cellOf(unsortKey(keys[i]))
+			v.Moments[i] = *a.shards[refs[i]&(shards-1)].moments.at(refs[i] >> shardBits)
+		}
+	})
+	for i := range a.shards {
+		a.shards[i].moments = arena[Moments]{}
 	}
 	a.gatherAttributes(v, refs)
 	for i := range a.shards {
 		a.shards[i].init(a)
 	}
 	return v
+}
+
+// share calls f for parts of [0, n), one for each Adder, at the same time.
+// Gathering mostly waits for memory, which goroutines can do side by side.
+func (a *Accumulator) share(n int, f func(lo, hi int)) {
+	parts := max(1, int(a.adders.Load()))
+	var wg sync.WaitGroup
+	for p := range parts {
+		wg.Go(func() { f(n*p/parts, n*(p+1)/parts) })
+	}
+	wg.Wait()
 }
 
 // sortKey orders cells as Cell.Compare does.
@@ -219,20 +243,28 @@ func (a *Accumulator) gatherAttributes(v *Voxels, refs []uint32) {
 	n := len(refs)
 	if a.columns.Has(Intensity) {
 		v.Intensity = make([]uint64, n)
-		for i, r := range refs {
-			v.Intensity[i] = *a.shards[r&(shards-1)].intensity.at(r >> shardBits)
-		}
+		a.share(n, func(lo, hi int) {
+			for i, r := range refs[lo:hi] {
+				v.Intensity[lo+i] = *a.shards[r&(shards-1)].intensity.at(r >> shardBits)
+			}
+		})
 	}
 	if a.columns.Has(Color) {
 		v.Red, v.Green, v.Blue = make([]uint64, n), make([]uint64, n), make([]uint64, n)
-		for i, r := range refs {
-			c := a.shards[r&(shards-1)].colour.at(r >> shardBits)
-			v.Red[i], v.Green[i], v.Blue[i] = c[0], c[1], c[2]
-		}
+		a.share(n, func(lo, hi int) {
+			for i, r := range refs[lo:hi] {
+				c := a.shards[r&(shards-1)].colour.at(r >> shardBits)
+				v.Red[lo+i], v.Green[lo+i], v.Blue[lo+i] = c[0], c[1], c[2]
+			}
+		})
 	}
 	if a.columns.Has(Class) {
+		v.Classes = make([]ClassCount, 0, n) // most voxels have one class
 		for i, r := range refs {
 			v.Classes = a.shards[r&(shards-1)].appendClasses(v.Classes, int32(i), r>>shardBits)
+		}
+		if len(v.Classes) == 0 {
+			v.Classes = nil
 		}
 	}
 }
