@@ -117,10 +117,16 @@ type patchRow struct {
 }
 
 func patchRows(s *Site) []patchRow {
-	zoneOf := make(map[int32]string)
+	// By the centres of patches: zones can hold most voxels of a survey.
+	zoneOf := make(map[int32]string, len(s.Findings.Patches))
+	for i := range s.Findings.Patches {
+		zoneOf[s.Findings.Patches[i].Voxel] = ""
+	}
 	for i := range s.Findings.Zones {
 		for _, v := range s.Findings.Zones[i].Voxels {
-			zoneOf[v] = s.Findings.Zones[i].ID
+			if _, ok := zoneOf[v]; ok {
+				zoneOf[v] = s.Findings.Zones[i].ID
+			}
 		}
 	}
 	rows := make([]patchRow, len(s.Findings.Patches))

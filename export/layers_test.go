@@ -100,3 +100,46 @@ func TestTablesErrors(t *testing.T) {
 		}
 	}
 }
+
+// Level ground looks nowhere, and where nothing stands there is no clearance to
+// be unsure of: no number would say so.
+func TestTablesNull(t *testing.T) {
+	s := testSite(t, 0.1, 600000, 5200000, 20)
+	f := &s.Findings
+	up := r3.Vec{Z: 1}
+	f.Obstacles[0].Face.Normal, f.Patches[0].Plane.Normal, f.Zones[0].InclinationDeg = up, up, 0
+	tables, err := Tables(s)
+	if err != nil {
+		t.Fatal(err)
+	}
+	values := func(name string) (of [3]any) {
+		for n, table := range tables[:3] {
+			for i, field := range table.Fields {
+				if field.Name == name {
+					of[n] = table.Features[0].Values[i]
+				}
+			}
+		}
+		return of
+	}
+	if got := values("dip_direction_deg"); got != [3]any{} {
+		t.Errorf("dip directions of level ground %v, want null", got)
+	}
+	if got := values("clearance_sigma_m"); got != [3]any{} {
+		t.Errorf("uncertainty %v of the clearance without obstacles, want null", got[1])
+	}
+	f.Obstacles[0].Face.Normal, f.Patches[0].Plane.Normal, f.Zones[0].InclinationDeg = r3.Vec{X: -0.6, Z: 0.8}, r3.Vec{Y: -1}, 30
+	f.Zones[0].DipDirectionDeg = 45
+	f.Patches[0].ClearanceM, f.Patches[0].ClearanceSigmaM = 2, 0.05
+	if tables, err = Tables(s); err != nil {
+		t.Fatal(err)
+	}
+	for n, want := range [3]float64{270, 180, 45} {
+		if got, ok := values("dip_direction_deg")[n].(float64); !ok || math.Abs(got-want) > 1e-9 {
+			t.Errorf("%s: dip direction %v, want %g", tables[n].Name, values("dip_direction_deg")[n], want)
+		}
+	}
+	if got := values("clearance_sigma_m")[1]; got != 0.05 {
+		t.Errorf("uncertainty of the clearance %v, want 0.05", got)
+	}
+}

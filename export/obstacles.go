@@ -3,6 +3,8 @@ package export
 import (
 	"math"
 
+	"gonum.org/v1/gonum/spatial/r3"
+
 	"ledgework/fit"
 )
 
@@ -98,10 +100,10 @@ func obstacleColumns() []column[obstacleRow] {
 		number("area_m2", "m²", metreDigits, "> 0", "surface area", func(r *row) float64 { return r.AreaM2 }),
 		number("rock_volume_m3", "m³", cubicDigits, "≥ 0", "volume between surface and reference face; of a recess, the missing rock", func(r *row) float64 { return r.RockVolumeM3 }),
 		number("ellipsoid_volume_m3", "m³", cubicDigits, "> 0", "volume of the whole ellipsoid, on both sides of the reference face", func(r *row) float64 { return r.Ellipsoid.Volume() }),
-		number("rock_share", "", ratioDigits, "≥ 0", "rock volume over the part of the ellipsoid on the same side of the reference face", func(r *row) float64 { return r.RockShare }),
-		number("volume_gap", "", FullPrecision, "≥ 0", "relative bound on how much larger the ellipsoid was than the smallest possible one, before it was scaled to contain every point", func(r *row) float64 { return r.VolumeGap }),
+		number("rock_share", "", ratioDigits, "0 to 1", "rock volume over the part of the ellipsoid on the same side of the reference face", func(r *row) float64 { return r.RockShare }),
+		number("volume_gap", "", FullPrecision, "≥ 0", "relative bound on how much larger the ellipsoid is than the smallest one that contains every point", func(r *row) float64 { return r.VolumeGap }),
 		number("inclination_deg", "°", degreeDigits, "0 to 180", "inclination of its steepest local plane: 0 flat, 90 vertical, more overhanging", func(r *row) float64 { return r.InclinationDeg }),
-		number("dip_direction_deg", "°", degreeDigits, "0 to 360", "azimuth in which the reference face looks", func(r *row) float64 { return r.DipDirectionDeg }),
+		null(looksNowhere, number("dip_direction_deg", "°", degreeDigits, "0 to 360", "azimuth in which the reference face looks", func(r *row) float64 { return dipDirection(r.Face.Normal) })),
 		null("no local plane could be fitted", number("surface_variation", "", ratioDigits, "0 to 1/3", "median share of the smallest eigenvalue of its local planes: 0 smooth, 1/3 no surface at all", func(r *row) float64 { return r.SurfaceVariation })),
 		column[row]{
 			Field: Field{Name: "scattered", Type: Boolean, Range: "true, false", Meaning: "not a surface: vegetation, wires or stray points"},
@@ -119,6 +121,19 @@ func obstacleColumns() []column[obstacleRow] {
 		number("face_inclination_deg", "°", degreeDigits, "0 to 180", "inclination of the reference face", func(r *row) float64 { return fit.InclinationDeg(r.Face.Normal) }),
 		count("voxels", "≥ 1", "occupied voxels", func(r *row) int64 { return int64(len(r.Voxels)) }),
 	)
+}
+
+// looksNowhere is the meaning of a dip direction that is null. Any number would
+// be taken for a direction, 0 for north.
+const looksNowhere = "level: it looks nowhere"
+
+// dipDirection is the dip direction of a unit normal in degrees, NaN where it
+// has none.
+func dipDirection(n r3.Vec) float64 {
+	if deg, ok := fit.DipDirectionDeg(n); ok {
+		return deg
+	}
+	return math.NaN()
 }
 
 // axisColumns are trend and plunge of the ellipsoid's axes.

@@ -1,5 +1,7 @@
 package export
 
+import "math"
+
 func patchLayer() Layer {
 	return Layer{
 		Name:  "patches",
@@ -23,15 +25,20 @@ func patchColumns() []column[patchRow] {
 		number("normal_h", "", FullPrecision, "-1 to 1", "its upward part", func(r *row) float64 { return r.Plane.Normal.Z }),
 		number("inclination_deg", "°", degreeDigits, "0 to 180", "inclination: 0 flat, 90 vertical, more overhanging", func(r *row) float64 { return r.InclinationDeg }),
 		null("unknown", number("inclination_sigma_deg", "°", degreeDigits, "≥ 0", "its uncertainty", func(r *row) float64 { return r.InclinationSigmaDeg })),
-		number("dip_direction_deg", "°", degreeDigits, "0 to 360", "azimuth in which the patch looks", func(r *row) float64 { return r.DipDirectionDeg }),
+		null(looksNowhere, number("dip_direction_deg", "°", degreeDigits, "0 to 360", "azimuth in which the patch looks", func(r *row) float64 { return dipDirection(r.Plane.Normal) })),
 		number("roughness_m", "m", metreDigits, "≥ 0", "RMS distance of the raw points to the plane, with its degrees of freedom", func(r *row) float64 { return r.RoughnessM }),
 		null("unknown", number("roughness_sigma_m", "m", metreDigits, "≥ 0", "its uncertainty", func(r *row) float64 { return r.RoughnessSigmaM })),
 		number("step_m", "m", metreDigits, "≥ 0", "largest distance of a voxel's mean outward of the plane", func(r *row) float64 { return r.StepM }),
 		null("unknown", number("step_sigma_m", "m", metreDigits, "≥ 0", "its uncertainty", func(r *row) float64 { return r.StepSigmaM })),
 		number("coverage", "", ratioDigits, "0 to 1", "share of the disc's cells that hold data", func(r *row) float64 { return r.Coverage }),
 		null("unknown", number("coverage_sigma", "", ratioDigits, "≥ 0", "its uncertainty", func(r *row) float64 { return r.CoverageSigma })),
-		null("no obstacle on the site", number("clearance_m", "m", metreDigits, "", "distance to the nearest obstacle's ellipsoid", func(r *row) float64 { return r.ClearanceM })),
-		null("unknown, or no obstacle on the site", number("clearance_sigma_m", "m", metreDigits, "≥ 0", "its uncertainty", func(r *row) float64 { return r.ClearanceSigmaM })),
+		null("no obstacle on the site", number("clearance_m", "m", metreDigits, "", "distance from the centre to the nearest obstacle's ellipsoid, less the footprint's radius: negative where they may overlap", func(r *row) float64 { return r.ClearanceM })),
+		null("unknown, or no obstacle on the site", number("clearance_sigma_m", "m", metreDigits, "≥ 0", "its uncertainty", func(r *row) float64 {
+			if math.IsInf(r.ClearanceM, 0) {
+				return math.NaN()
+			}
+			return r.ClearanceSigmaM
+		})),
 		number("score", "", ratioDigits, "0 to 1", "desirability by the profile: 1 all measures at their best, 0 one beyond its allowed limit", func(r *row) float64 { return r.Score }),
 		number("confidence", "", ratioDigits, "0 to 1", "probability, from the uncertainties, that all allowed limits hold", func(r *row) float64 { return r.Confidence }),
 		null("none does", text("limited_by", "inclination, roughness, step, coverage, clearance", "the measure that limits the score", func(r *row) string { return string(r.LimitedBy) })),
@@ -61,7 +68,7 @@ func zoneColumns() []column[zoneRow] {
 		number("best_score", "", ratioDigits, "0 to 1", "greatest score in it", func(r *row) float64 { return r.BestScore }),
 		number("mean_score", "", ratioDigits, "0 to 1", "mean score over its voxels", func(r *row) float64 { return r.MeanScore }),
 		number("inclination_deg", "°", degreeDigits, "0 to 180", "inclination of its mean normal", func(r *row) float64 { return r.InclinationDeg }),
-		number("dip_direction_deg", "°", degreeDigits, "0 to 360", "azimuth of its mean normal", func(r *row) float64 { return r.DipDirectionDeg }),
+		null(looksNowhere, number("dip_direction_deg", "°", degreeDigits, "0 to 360", "azimuth of its mean normal", func(r *row) float64 { return dipDirection(r.normal) })),
 		number("e_m", "m", metreDigits, "", "east of the mean of its voxels", func(r *row) float64 { return r.centre.X }),
 		number("n_m", "m", metreDigits, "", "north of that mean", func(r *row) float64 { return r.centre.Y }),
 		number("h_m", "m", metreDigits, "", "height of that mean", func(r *row) float64 { return r.centre.Z }),

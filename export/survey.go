@@ -45,7 +45,7 @@ func siteColumns() []column[siteRow] {
 		number("allowed_inclination_max_deg", "°", degreeDigits, "0 to 180", "greatest inclination allowed", func(r *row) float64 { return r.Profile.InclinationDeg.AllowedMax }),
 		number("allowed_roughness_m", "m", metreDigits, "≥ 0", "greatest roughness allowed", func(r *row) float64 { return r.Profile.RoughnessM.Allowed }),
 		number("allowed_step_m", "m", metreDigits, "≥ 0", "greatest step allowed", func(r *row) float64 { return r.Profile.StepM.Allowed }),
-		number("allowed_clearance_m", "m", metreDigits, "≥ 0", "least clearance allowed", func(r *row) float64 { return r.Profile.ClearanceM.Allowed }),
+		number("allowed_clearance_m", "m", metreDigits, "", "least clearance allowed; negative lets a footprint overlap an obstacle", func(r *row) float64 { return r.Profile.ClearanceM.Allowed }),
 		number("allowed_coverage", "", ratioDigits, "0 to 1", "least coverage allowed", func(r *row) float64 { return r.Profile.Coverage.Allowed }),
 		text("caution", "", "what this may be used for", func(*row) string { return Caution }),
 	}
