@@ -169,8 +169,9 @@ func TestRangeNoiseLiesAlongTheRay(t *testing.T) {
 			sum += sq(r3.Norm(ray) - u)
 		}
 	}
-	got := math.Sqrt(sum / float64(len(noisy)))
-	if math.Abs(got/0.02-1) > 0.02 {
+	n := float64(len(noisy))
+	got := math.Sqrt(sum / n)
+	if math.Abs(got/0.02-1) > 4/math.Sqrt(2*n) { // standard errors
 		t.Errorf("noise along the ray is %.5f m, want 0.02", got)
 	}
 }

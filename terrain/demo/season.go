@@ -110,19 +110,20 @@ type setup struct {
 	step float64
 }
 
-// setups are three on the skerries off the foot, and two on masts from which
+// setups are three on the skerries off the foot, one of them close enough to
+// look up under the Slot's roof, and two on masts from which
 // treads and the slope above the crest can be seen, with a finer step because
 // they see both at a slant.
 func setups(season int) []setup {
 	const fine = 0.8
 	if season == 1 {
 		return []setup{
-			{r3.Vec{X: 2, Y: 30, Z: 3}, 1.1}, {r3.Vec{X: 30, Y: 34, Z: 3.5}, 1.1}, {r3.Vec{X: 70, Y: 22, Z: 3}, 0.9},
+			{r3.Vec{X: 2, Y: 30, Z: 3}, 1.1}, {r3.Vec{X: 30, Y: 34, Z: 3.5}, 1.1}, {r3.Vec{X: 66, Y: 14, Z: 2.5}, 0.95},
 			{r3.Vec{X: 2, Y: 25, Z: 42}, fine}, {r3.Vec{X: 50, Y: 22, Z: 42}, 0.7},
 		}
 	}
 	return []setup{
-		{r3.Vec{X: 8, Y: 29, Z: 3.2}, 0.9}, {r3.Vec{X: 36, Y: 34, Z: 3}, 1}, {r3.Vec{X: 67, Y: 24, Z: 3.4}, 1},
+		{r3.Vec{X: 8, Y: 29, Z: 3.2}, 0.9}, {r3.Vec{X: 36, Y: 34, Z: 3}, 1}, {r3.Vec{X: 64, Y: 15, Z: 2.8}, 1},
 		{r3.Vec{X: 6, Y: 25, Z: 43}, fine}, {r3.Vec{X: 52, Y: 24, Z: 44}, 0.7},
 	}
 }
