@@ -21,9 +21,8 @@ const (
 // FindObstacles finds the bulges, overhangs and recesses of s, whose relief
 // must have been measured, sorted by id. Each is a connected set of voxels
 // (26-neighbourhood, gaps of two spacings bridged) that holds at least one
-// voxel beyond the threshold and grows to those beyond half of it (for an
-// overhang, half of its tolerance: to the vertical, it would grow over every
-// sheer wall). A bulge and an overhang that share voxels are one
+// voxel beyond the threshold and grows to those beyond half of it, or for an
+// overhang to those beyond vertical within the surface radius. A bulge and an overhang that share voxels are one
 // obstacle.
 func FindObstacles(ctx context.Context, s *Surface) ([]Obstacle, error) {
 	regions, err := s.findRegions(ctx)
@@ -66,8 +65,6 @@ type region struct {
 func (s *Surface) findRegions(ctx context.Context) ([]region, error) {
 	o, relief := &s.options, s.Relief.Height
 	steep := math.Cos((90 + o.OverhangToleranceDeg) * math.Pi / 180)
-	beyond := math.Cos((90 + growShare*o.OverhangToleranceDeg) * math.Pi / 180)
-	fitted := s.Planes.Fitted
 	bulges, err := s.segment(ctx,
 		func(i int) bool { return relief[i] >= growShare*o.BulgeHeightM },
 		func(i int) bool { return relief[i] >= o.BulgeHeightM })
@@ -80,11 +77,13 @@ func (s *Surface) findRegions(ctx context.Context) ([]region, error) {
 	if err != nil {
 		return nil, err
 	}
+	overhanging := func(i int) bool { return s.Planes.Normal[i].Z < steep }
+	rim := s.overhangRim(overhanging)
 	overhangs, err := s.segment(ctx,
-		func(i int) bool { return fitted(i) && s.Planes.Normal[i].Z < beyond },
+		func(i int) bool { return rim[i] },
 		func(i int) bool {
 			// Not where the plane itself is unsure by as much.
-			return fitted(i) && s.Planes.Normal[i].Z < steep && float64(s.Planes.SigmaDeg[i]) < o.OverhangToleranceDeg
+			return overhanging(i) && float64(s.Planes.SigmaDeg[i]) < o.OverhangToleranceDeg
 		})
 	if err != nil {
 		return nil, err
@@ -100,6 +99,25 @@ func (s *Surface) findRegions(ctx context.Context) ([]region, error) {
 		regions = append(regions, region{Recess, voxels, 0})
 	}
 	return regions, nil
+}
+
+// overhangRim marks the overhanging voxels and those beyond vertical around
+// them. Across an edge local planes turn within their radius; growing any
+// further would take in half of a sheer wall, where noise decides what is
+// beyond.
+func (s *Surface) overhangRim(overhanging func(i int) bool) []bool {
+	rim := make([]bool, s.Voxels.Len())
+	var near []int32
+	for i := range rim {
+		if !overhanging(i) {
+			continue
+		}
+		near = s.Index.Within(near[:0], s.Index.Mean(i), s.Planes.RadiusM)
+		for _, n := range near {
+			rim[n] = rim[n] || s.Planes.Normal[n].Z < 0
+		}
+	}
+	return rim
 }
 
 // segment returns the connected sets of voxels for which grow holds, of at

@@ -98,7 +98,7 @@ func shapes() []shape {
 		out = append(out, shape{name, s, front, []attitude{lean.moved(-2, 2, h(-2, 2)), lean.moved(3, -3, h(3, -3))}})
 	}
 	// Sheer walls, one of them within the tolerance of overhangs.
-	for _, deg := range []float64{90, 92} {
+	for _, deg := range []float64{90, 93} {
 		s, a := wall(deg)
 		out = append(out, shape{fmt.Sprintf("wall of %g°", deg), s, front, []attitude{a.moved(-2, 2, 0), a.moved(3, -3, 0)}})
 	}
