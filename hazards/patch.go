@@ -63,7 +63,10 @@ func FindPatches(ctx context.Context, s *Surface, planes *fit.LocalPlanes, obsta
 	if err != nil {
 		return nil, nil, err
 	}
-	patches := j.patches(picked)
+	patches, err := j.patches(ctx, picked)
+	if err != nil {
+		return nil, nil, err
+	}
 	zones, err := j.zones(ctx, scores, patches)
 	if err != nil {
 		return nil, nil, err
@@ -221,7 +224,7 @@ func frame(n r3.Vec) (u, w r3.Vec) {
 }
 
 // patches returns the landing patches at the picked voxels, sorted by id.
-func (j *judge) patches(picked []int32) []Patch {
+func (j *judge) patches(ctx context.Context, picked []int32) ([]Patch, error) {
 	cells := make([]terrain.Cell, len(picked))
 	for i, v := range picked {
 		cells[i] = j.voxels.Cells[v]
@@ -230,11 +233,14 @@ func (j *judge) patches(picked []int32) []Patch {
 	patches := make([]Patch, len(picked))
 	g := &gathering{j: j}
 	for i, v := range picked {
+		if err := ctx.Err(); err != nil {
+			return nil, err
+		}
 		patches[i] = j.patch(v, g)
 		patches[i].ID = ids[i]
 	}
 	slices.SortFunc(patches, func(a, b Patch) int { return strings.Compare(a.ID, b.ID) })
-	return patches
+	return patches, nil
 }
 
 // patch returns the landing patch at voxel v, but for its id.

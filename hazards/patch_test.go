@@ -337,6 +337,25 @@ func TestFindPatchesCancelled(t *testing.T) {
 	}
 }
 
+// Every stage heeds the context by itself: each takes long on a large survey.
+func TestPatchesAndZonesCancelled(t *testing.T) {
+	g, obstacles := rubble(t, 2)
+	p, _ := Example("ledge")
+	j := newJudge(g.surface, g.planes, obstacles, &p)
+	scores, err := j.scores(context.Background(), 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	ctx, cancel := context.WithCancel(context.Background())
+	cancel()
+	if got, err := j.patches(ctx, []int32{0}); got != nil || !errors.Is(err, context.Canceled) {
+		t.Errorf("%d patches, error %v, want canceled", len(got), err)
+	}
+	if got, err := j.zones(ctx, scores, nil); got != nil || !errors.Is(err, context.Canceled) {
+		t.Errorf("%d zones, error %v, want canceled", len(got), err)
+	}
+}
+
 func TestFindPatchesNothing(t *testing.T) {
 	p, _ := Example("ledge")
 	// Two lone points: no plane anywhere. And a footprint below the spacing.

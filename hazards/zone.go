@@ -35,6 +35,9 @@ func (j *judge) zones(ctx context.Context, scores []float64, patches []Patch) ([
 	var zones []Zone
 	var normals []r3.Vec
 	for i, v := range usable {
+		if i%chunkVoxels == 0 && ctx.Err() != nil {
+			return nil, ctx.Err()
+		}
 		at, ok := zoneOf[labels[i]]
 		if !ok {
 			at = len(zones)
