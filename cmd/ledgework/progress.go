@@ -2,6 +2,7 @@ package main
 
 import (
 	"fmt"
+	"strings"
 	"time"
 
 	"github.com/vbauerster/mpb/v8"
@@ -17,9 +18,15 @@ func newProgress(g *globals, term *terminal) (worksite.Progress, func()) {
 	if !term.interactive || g.Quiet || g.JSON {
 		return nil, func() {}
 	}
-	b := &bars{p: mpb.New(mpb.WithOutput(term.err), mpb.WithWidth(32), mpb.WithRefreshRate(120*time.Millisecond))}
+	b := &bars{p: mpb.New(mpb.WithOutput(term.err), mpb.WithAutoRefresh(), mpb.WithWidth(barWidth), mpb.WithRefreshRate(120*time.Millisecond))}
 	return b, b.close
 }
+
+// Widths in characters: of a bar, and of what stands right of one.
+const (
+	barWidth    = 32
+	spinnerTail = 31
+)
 
 // bars shows one bar for each stage, with rate and remaining time.
 type bars struct {
@@ -32,7 +39,7 @@ func (b *bars) Begin(stage string, total int64, unit worksite.Unit) {
 	name := decor.Name(stage, decor.WC{W: 18, C: decor.DindentRight})
 	eta := decor.OnComplete(decor.AverageETA(decor.ET_STYLE_GO, decor.WC{W: 7}), "done")
 	if total <= 0 {
-		b.bar = b.p.New(0, mpb.SpinnerStyle().PositionLeft(), mpb.BarFillerClearOnComplete(), mpb.PrependDecorators(name), mpb.AppendDecorators(decor.OnComplete(decor.Elapsed(decor.ET_STYLE_GO, decor.WC{W: 31}), "                            done")))
+		b.bar = b.p.New(0, mpb.SpinnerStyle().PositionLeft(), mpb.BarFillerClearOnComplete(), mpb.PrependDecorators(name), mpb.AppendDecorators(decor.OnComplete(decor.Elapsed(decor.ET_STYLE_GO, decor.WC{W: spinnerTail}), fmt.Sprintf("%*s", barWidth+spinnerTail, "done"))))
 		return
 	}
 	rate := decor.AverageSpeed(0, "%.0f "+string(unit)+"/s", decor.WC{W: 18})
@@ -70,7 +77,8 @@ func printStages(term *terminal, stages []worksite.Stage) {
 	var all time.Duration
 	for _, s := range stages {
 		all += s.Elapsed
-		fmt.Fprintf(term.err, "%-18s %8.2f s   %s\n", s.Name, s.Elapsed.Seconds(), s.Note)
+		line := fmt.Sprintf("%-18s %8.2f s   %s", s.Name, s.Elapsed.Seconds(), s.Note)
+		fmt.Fprintln(term.err, strings.TrimRight(line, " "))
 	}
 	fmt.Fprintf(term.err, "%-18s %8.2f s\n", "total", all.Seconds())
 }
