@@ -15,7 +15,7 @@ tool() {
 			return
 		fi
 	done
-	GOBIN="$PWD/.tools" GOFLAGS= go install "$2@$3" >&2 && echo ".tools/$1"
+	GOBIN="$PWD/.tools" GOFLAGS= timeout 600 go install "$2@$3" >&2 && echo ".tools/$1"
 }
 
 echo "== gofmt"
