@@ -42,6 +42,9 @@ var ErrCrowded = errors.New("fit: too many points within the radius for exact su
 // Cost per voxel is one pass over the members within reach, whose sums have
 // been shifted, exactly, to one common centre per tile beforehand.
 func FitLocal(ctx context.Context, at *terrain.Voxels, members *terrain.Index, radiusM float64, workers int) (*LocalPlanes, error) {
+	if !(radiusM <= maxRadiusCells*members.Voxels().Lattice.SpacingM()) {
+		return nil, ErrCrowded
+	}
 	n := at.Len()
 	out := &LocalPlanes{
 		RadiusM: radiusM, Normal: make([]r3.Vec, n), Offset: make([]float64, n),
@@ -65,6 +68,9 @@ const (
 	minPlaneVoxels = 5
 	minStripRatio  = 0.02 // of the variances across and along: a strip seven times as long as wide
 )
+
+// maxRadiusCells keeps the cells within a radius well within int32.
+const maxRadiusCells = 1 << 20
 
 // tileRadii is a tile's edge in neighbourhood radii. The halo makes a tile
 // gather (1+2/tileRadii)² times the members of its own area; larger tiles fall
@@ -229,6 +235,7 @@ func (w *localWorker) gather(queries []int32) (r3.Vec, error) {
 	if room < 0 {
 		return centre, ErrCrowded
 	}
+	lo, hi = boxOf(v.Cells, w.found)
 	w.layOut(lo, hi, centre)
 	// The starts count up while columns fill, and are each one's end after.
 	for n := len(w.found) - 1; n >= 0; n-- {
@@ -240,6 +247,22 @@ func (w *localWorker) gather(queries []int32) (r3.Vec, error) {
 			int64(c.I-mid.I)*l.Quanta(), int64(c.J-mid.J)*l.Quanta(), int64(c.K-mid.K)*l.Quanta())}
 	}
 	return centre, nil
+}
+
+// boxOf is the box of the listed cells, one cell without any. Columns are laid
+// over it and not over all that is within reach, which for a radius larger than
+// the survey is mostly empty.
+func boxOf(cells []terrain.Cell, list []int32) (lo, hi terrain.Cell) {
+	if len(list) == 0 {
+		return lo, hi
+	}
+	lo, hi = cells[list[0]], cells[list[0]]
+	for _, i := range list {
+		c := cells[i]
+		lo = terrain.Cell{I: min(lo.I, c.I), J: min(lo.J, c.J), K: min(lo.K, c.K)}
+		hi = terrain.Cell{I: max(hi.I, c.I), J: max(hi.J, c.J), K: max(hi.K, c.K)}
+	}
+	return lo, hi
 }
 
 // layOut chooses the axes for the members found, and counts them so that starts

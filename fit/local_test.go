@@ -226,6 +226,34 @@ func TestFitLocalCrowded(t *testing.T) {
 	}
 }
 
+// A radius far larger than the survey takes no memory for the space around it,
+// and one that leaves the lattice is refused.
+func TestFitLocalLargeRadius(t *testing.T) {
+	v := sumPoints(t, 0.005, []r3.Vec{{X: 0.012, Z: 0.001}, {X: 0.007, Y: 0.013}, {X: 0.021, Y: 0.002}, {Y: 0.031, Z: 0.002}, {X: 0.034, Y: 0.038}, {X: 0.002, Y: 0.003}})
+	x := terrain.NewIndex(v)
+	p, err := FitLocal(context.Background(), v, x, 400, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for i := range v.Cells {
+		if p.Points[i] != 6 || !p.Fitted(i) {
+			t.Errorf("voxel %d: %d points, want all 6 and a plane", i, p.Points[i])
+		}
+	}
+	w := &localWorker{at: v, members: x, radius: 400}
+	if _, err := w.gather([]int32{0}); err != nil {
+		t.Fatal(err)
+	}
+	if n := len(w.starts); n > 100 {
+		t.Errorf("%d columns over a survey of 8 cells square", n-1)
+	}
+	for _, radius := range []float64{1e4, 1e12, math.Inf(1), math.NaN()} {
+		if _, err := FitLocal(context.Background(), v, x, radius, 1); !errors.Is(err, ErrCrowded) {
+			t.Errorf("radius %g: error %v, want ErrCrowded", radius, err)
+		}
+	}
+}
+
 // A face of 20 m × 10 m with about 80 occupied neighbours within the radius.
 func BenchmarkFitLocal(b *testing.B) {
 	rng := rand.New(rand.NewPCG(1, 3))
