@@ -269,7 +269,7 @@ func BenchmarkFitLocal(b *testing.B) {
 			b.ReportAllocs()
 			var members int64
 			for range b.N {
-				p, err := FitLocal(context.Background(), v, x, 0.21, workers)
+				p, err := FitLocal(context.Background(), v, x, 0.22, workers)
 				if err != nil {
 					b.Fatal(err)
 				}
