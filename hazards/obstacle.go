@@ -78,7 +78,10 @@ func (s *Surface) findRegions(ctx context.Context) ([]region, error) {
 		return nil, err
 	}
 	overhanging := func(i int) bool { return s.Planes.Normal[i].Z < steep }
-	rim := s.overhangRim(overhanging)
+	rim, err := s.overhangRim(ctx, overhanging)
+	if err != nil {
+		return nil, err
+	}
 	overhangs, err := s.segment(ctx,
 		func(i int) bool { return rim[i] },
 		func(i int) bool {
@@ -105,10 +108,13 @@ func (s *Surface) findRegions(ctx context.Context) ([]region, error) {
 // them. Across an edge local planes turn within their radius; growing any
 // further would take in half of a sheer wall, where noise decides what is
 // beyond.
-func (s *Surface) overhangRim(overhanging func(i int) bool) []bool {
+func (s *Surface) overhangRim(ctx context.Context, overhanging func(i int) bool) ([]bool, error) {
 	rim := make([]bool, s.Voxels.Len())
 	var near []int32
 	for i := range rim {
+		if i%chunkVoxels == 0 && ctx.Err() != nil {
+			return nil, ctx.Err()
+		}
 		if !overhanging(i) {
 			continue
 		}
@@ -117,7 +123,7 @@ func (s *Surface) overhangRim(overhanging func(i int) bool) []bool {
 			rim[n] = rim[n] || s.Planes.Normal[n].Z < 0
 		}
 	}
-	return rim
+	return rim, nil
 }
 
 // segment returns the connected sets of voxels for which grow holds, of at
@@ -169,7 +175,8 @@ func (s *Surface) area(set []int32) float64 {
 // reach is the horizontal distance from lip to back of an overhanging set: the
 // greatest extent along its mean outward azimuth within one vertical slice
 // three spacings wide, so that a band around a curved wall does not count its
-// curvature.
+// curvature. A level roof has no outward azimuth: there it is the extent across
+// the roof, which a rope would have to pass at least.
 func (s *Surface) reach(set []int32) float64 {
 	var out r3.Vec
 	for _, i := range set {
@@ -179,28 +186,46 @@ func (s *Surface) reach(set []int32) float64 {
 		}
 		out = r3.Add(out, r3.Vec{X: n.X, Y: n.Y})
 	}
-	if r3.Norm(out) == 0 {
-		return 0
+	if r3.Norm(out) < levelShare*float64(len(set)) {
+		out = s.narrowest(set)
 	}
 	out = r3.Unit(out)
 	width := 3 * s.Voxels.Lattice.SpacingM()
 	type stretch struct{ lo, hi float64 }
-	slices := map[int]stretch{}
+	strips := map[int]stretch{}
 	origin := s.Index.Mean(int(set[0]))
 	var most float64
 	for _, i := range set {
 		d := r3.Sub(s.Index.Mean(int(i)), origin)
 		along, across := d.X*out.X+d.Y*out.Y, d.X*out.Y-d.Y*out.X
 		k := int(math.Floor(across / width))
-		e, ok := slices[k]
+		e, ok := strips[k]
 		if !ok {
 			e = stretch{along, along}
 		}
 		e = stretch{min(e.lo, along), max(e.hi, along)}
-		slices[k] = e
+		strips[k] = e
 		most = max(most, e.hi-e.lo)
 	}
 	return most
+}
+
+// levelShare is the least horizontal part of a mean outward normal that tells an
+// azimuth: it belongs to a roof inclined by 5°, and is well above the noise of
+// normals.
+const levelShare = 0.087
+
+// narrowest is the horizontal direction in which a set is narrowest.
+func (s *Surface) narrowest(set []int32) r3.Vec {
+	origin := s.Index.Mean(int(set[0]))
+	var x, y, xx, xy, yy float64
+	for _, i := range set {
+		d := r3.Sub(s.Index.Mean(int(i)), origin)
+		x, y, xx, xy, yy = x+d.X, y+d.Y, xx+d.X*d.X, xy+d.X*d.Y, yy+d.Y*d.Y
+	}
+	n := float64(len(set))
+	sin, cos := math.Sincos(math.Atan2(2*(xy-x*y/n), xx-x*x/n-(yy-y*y/n)) / 2)
+	return r3.Vec{X: -sin, Y: cos} // across the longer principal axis
 }
 
 // mergeShared makes one region of the bulges and overhangs that share voxels,
@@ -247,12 +272,12 @@ func mergeShared(bulges [][]int32, overhangs []region) []region {
 		}
 		b := &out[into]
 		b.kind = OverhangingBulge
-		b.voxels = append(slices.Clone(b.voxels), o.voxels...)
+		b.voxels = append(b.voxels, o.voxels...)
 		b.reachM = max(b.reachM, o.reachM)
 	}
 	for i := len(out) - 1; i > 0; i-- {
 		if r := root(i); r != i {
-			out[r].voxels = append(slices.Clone(out[r].voxels), out[i].voxels...)
+			out[r].voxels = append(out[r].voxels, out[i].voxels...)
 			out[r].kind = OverhangingBulge
 			out[r].reachM = max(out[r].reachM, out[i].reachM)
 			out[i].voxels = nil
@@ -280,8 +305,11 @@ func (s *Surface) obstacle(r *region) (Obstacle, error) {
 	}
 	s.measure(&o, r)
 
+	// Cubes are never flat, so no least semi-axis is asked for: half a spacing
+	// would be exactly the half thickness of one layer, and rounding would
+	// decide whether that is thickened.
 	corners := s.corners(r.voxels)
-	least := s.Voxels.Lattice.SpacingM() / 2
+	const least = 0
 	var gap fit.Gap
 	var err error
 	if r.kind == Bulge || r.kind == OverhangingBulge {
@@ -294,37 +322,54 @@ func (s *Surface) obstacle(r *region) (Obstacle, error) {
 	}
 	o.VolumeGap = gap.Volume
 	o.Inflated = o.Ellipsoid.Inflate(s.options.ClearanceM)
-	room := o.Ellipsoid.Volume()
-	if r.kind == Bulge || r.kind == OverhangingBulge {
-		room /= 2
+	if o.RockVolumeM3 > 0 {
+		share := outwardShare(&o.Ellipsoid, &o.Face)
+		if r.kind == Recess {
+			share = 1 - share
+		}
+		o.RockShare = min(1, o.RockVolumeM3/(share*o.Ellipsoid.Volume()))
 	}
-	o.RockShare = min(1, o.RockVolumeM3/room)
 	return o, nil
+}
+
+// outwardShare is the share of an ellipsoid's volume on the side of a plane that
+// the normal points to: that of a cap of the unit ball.
+func outwardShare(e *fit.Ellipsoid, face *fit.Plane) float64 {
+	var squares float64
+	for i, a := range e.Axes {
+		t := e.SemiAxes[i] * r3.Dot(a, face.Normal)
+		squares += t * t
+	}
+	t := max(-1, min(face.Signed(e.Centre)/math.Sqrt(squares), 1))
+	return (2 + 3*t - t*t*t) / 4
 }
 
 // baseOf is the plane that stands for the reference face of a set: the mean
 // normal of the faces of its voxels through the mean of their feet. Where no
 // face is known it is the mean local plane.
 func (s *Surface) baseOf(set []int32) (normal, base r3.Vec) {
+	// Sums of whole coordinates would lose digits.
+	origin := s.Index.Mean(int(set[0]))
 	var known float64
 	for _, i := range set {
 		if n := s.Relief.Normal[i]; n != (r3.Vec{}) {
 			normal = r3.Add(normal, n)
-			base = r3.Add(base, r3.Sub(s.Index.Mean(int(i)), r3.Scale(s.Relief.Height[i], n)))
+			base = r3.Add(base, r3.Sub(r3.Sub(s.Index.Mean(int(i)), origin), r3.Scale(s.Relief.Height[i], n)))
 			known++
 		}
 	}
 	if known > 0 && r3.Norm(normal) > 0 {
-		return r3.Unit(normal), r3.Scale(1/known, base)
+		return r3.Unit(normal), r3.Add(origin, r3.Scale(1/known, base))
 	}
+	normal, base = r3.Vec{}, r3.Vec{}
 	for _, i := range set {
 		normal = r3.Add(normal, s.Planes.Normal[i])
-		base = r3.Add(base, s.Index.Mean(int(i)))
+		base = r3.Add(base, r3.Sub(s.Index.Mean(int(i)), origin))
 	}
 	if r3.Norm(normal) == 0 {
 		normal = r3.Vec{Z: 1}
 	}
-	return r3.Unit(normal), r3.Scale(1/float64(len(set)), base)
+	return r3.Unit(normal), r3.Add(origin, r3.Scale(1/float64(len(set)), base))
 }
 
 // measure fills in heights, area, volume and what the surface is like.
@@ -377,12 +422,20 @@ func (s *Surface) measure(o *Obstacle, r *region) {
 	}
 }
 
-// corners are the eight corners of each voxel of a set.
+// corners are the eight corners of the first and the last voxel of each row of a
+// set. What contains them contains all: those of the others lie between.
 func (s *Surface) corners(set []int32) []r3.Vec {
-	l := s.Voxels.Lattice
-	out := make([]r3.Vec, 0, 8*len(set))
-	for _, i := range set {
-		c := s.Voxels.Cells[i]
+	l, cells := s.Voxels.Lattice, s.Voxels.Cells
+	sameRow := func(m, n int) bool {
+		a, b := cells[set[m]], cells[set[n]]
+		return a.J == b.J && a.K == b.K
+	}
+	var out []r3.Vec
+	for m, i := range set {
+		if m > 0 && m+1 < len(set) && sameRow(m-1, m) && sameRow(m, m+1) {
+			continue
+		}
+		c := cells[i]
 		for n := range int32(8) {
 			out = append(out, l.Corner(terrain.Cell{I: c.I + n&1, J: c.J + n>>1&1, K: c.K + n>>2}))
 		}

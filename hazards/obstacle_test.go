@@ -5,12 +5,15 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"math/rand/v2"
 	"reflect"
 	"slices"
 	"strings"
 	"testing"
 
 	"gonum.org/v1/gonum/spatial/r3"
+
+	"ledgework/fit"
 )
 
 // halfM is how far the sheets of a scene reach.
@@ -302,6 +305,70 @@ func TestObstacleMeasures(t *testing.T) {
 				}
 			})
 		}
+	}
+}
+
+// A level roof too small for a reference face and one layer of voxels thick: it
+// faces no azimuth, and its ellipsoid is that of a box, whose semi-axes are √3
+// times the half edges. Wherever the lattice puts it, the result is the same.
+func TestLevelRoof(t *testing.T) {
+	const g = 0.05
+	for _, at := range []r3.Vec{{}, {X: 412000, Y: 6543000, Z: 30}, {X: 412345.6, Y: 6543000, Z: 31.15}, {X: 412000, Z: 139.65}, {Z: 7.1}} {
+		var points []r3.Vec
+		for i := range 40 {
+			for j := range 20 {
+				for n := range 4 {
+					points = append(points, r3.Vec{
+						X: at.X + g*(float64(i)+0.3+0.1*float64(n)), Y: at.Y + g*(float64(j)+0.2+0.2*float64(n)), Z: at.Z + g*(0.3+0.1*float64(n%2)),
+					})
+				}
+			}
+		}
+		o, _ := ObstacleOptions{}.Resolve(g)
+		ctx := context.Background()
+		s, err := NewSurface(ctx, voxelise(t, g, points), []r3.Vec{r3.Add(at, r3.Vec{X: 1, Y: 0.5, Z: -10})}, o, 1)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if err := s.MeasureRelief(ctx); err != nil {
+			t.Fatal(err)
+		}
+		found, err := FindObstacles(ctx, s)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if len(found) != 1 || found[0].Kind != Overhang {
+			t.Fatalf("at %v: %d obstacles, want one overhang", at, len(found))
+		}
+		checkEnclosed(t, s, found)
+		near(t, "reach", found[0].HeightM, 19*g, 1e-3)
+		near(t, "inclination", found[0].InclinationDeg, 180, 1)
+		for i, edge := range [3]float64{40 * g, 20 * g, g} {
+			near(t, "semi-axis", found[0].Ellipsoid.SemiAxes[i], math.Sqrt(3)/2*edge, 1e-6*edge)
+		}
+	}
+}
+
+// The share of an ellipsoid beyond a plane against counting: points of a fine
+// grid through it.
+func TestOutwardShare(t *testing.T) {
+	rng := rand.New(rand.NewPCG(1, 1))
+	for range 20 {
+		e := fit.Ellipsoid{Centre: r3.Vec{X: 1, Y: 2, Z: 3}, SemiAxes: [3]float64{3, 2, 1}, Axes: [3]r3.Vec{{Y: 1}, {Z: 1}, {X: 1}}}
+		face := fit.Plane{Normal: randomDirection(rng), Centroid: r3.Add(e.Centre, r3.Scale(1.5*rng.NormFloat64(), randomDirection(rng)))}
+		const steps = 60
+		inside, beyond := 0, 0
+		for n := range steps * steps * steps {
+			at := func(k int) float64 { return 3 * (2*(float64(k%steps)+0.5)/steps - 1) }
+			p := r3.Add(e.Centre, r3.Vec{X: at(n), Y: at(n / steps), Z: at(n / steps / steps)})
+			if e.Contains(p) {
+				inside++
+				if face.Signed(p) > 0 {
+					beyond++
+				}
+			}
+		}
+		near(t, "share", outwardShare(&e, &face), float64(beyond)/float64(inside), 0.01)
 	}
 }
 
