@@ -36,7 +36,7 @@ type Obstacle struct {
 	// Inflated is the same, grown by the profile's clearance.
 	Ellipsoid fit.Ellipsoid
 	Inflated  fit.Ellipsoid
-	VolumeGap float64 // relative bound on volume above the optimal ellipsoid's, before scaling for containment
+	VolumeGap float64 // relative bound on its volume above that of the least ellipsoid around the corners
 
 	Face         fit.Plane // reference face it stands on; normal points into the air
 	Top          r3.Vec    // the voxel mean furthest from the face
@@ -46,7 +46,7 @@ type Obstacle struct {
 	RockShare    float64   // rock volume over the part of the ellipsoid on the same side of the face
 
 	InclinationDeg   float64 // of the steepest local plane, 90 vertical
-	DipDirectionDeg  float64 // of the reference face
+	DipDirectionDeg  float64 // of the reference face, 0 where that is level
 	SurfaceVariation float64 // of all its voxels' local planes, median
 	Scattered        bool    // not a surface: vegetation, wires
 }

@@ -22,8 +22,8 @@ const (
 // must have been measured, sorted by id. Each is a connected set of voxels
 // (26-neighbourhood, gaps of two spacings bridged) that holds at least one
 // voxel beyond the threshold and grows to those beyond half of it, or for an
-// overhang to those beyond vertical within the surface radius. A bulge and an overhang that share voxels are one
-// obstacle.
+// overhang to those beyond vertical within the surface radius. A bulge and an
+// overhang that share voxels are one obstacle.
 func FindObstacles(ctx context.Context, s *Surface) ([]Obstacle, error) {
 	regions, err := s.findRegions(ctx)
 	if err != nil {
