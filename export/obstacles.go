@@ -102,7 +102,7 @@ func obstacleColumns() []column[obstacleRow] {
 		number("ellipsoid_volume_m3", "m³", cubicDigits, "> 0", "volume of the whole ellipsoid, on both sides of the reference face", func(r *row) float64 { return r.Ellipsoid.Volume() }),
 		number("rock_share", "", ratioDigits, "0 to 1", "rock volume over the part of the ellipsoid on the same side of the reference face", func(r *row) float64 { return r.RockShare }),
 		number("volume_gap", "", FullPrecision, "≥ 0", "relative bound on how much larger the ellipsoid is than the smallest one that contains every point", func(r *row) float64 { return r.VolumeGap }),
-		number("inclination_deg", "°", degreeDigits, "0 to 180", "inclination of its steepest local plane: 0 flat, 90 vertical, more overhanging", func(r *row) float64 { return r.InclinationDeg }),
+		number("inclination_deg", "°", degreeDigits, "0 to 180", "95th percentile of the inclination of its local planes: 0 flat, 90 vertical, more overhanging", func(r *row) float64 { return r.InclinationDeg }),
 		null(looksNowhere, number("dip_direction_deg", "°", degreeDigits, "0 to 360", "azimuth in which the reference face looks", func(r *row) float64 { return dipDirection(r.Face.Normal) })),
 		null("no local plane could be fitted", number("surface_variation", "", ratioDigits, "0 to 1/3", "median share of the smallest eigenvalue of its local planes: 0 smooth, 1/3 no surface at all", func(r *row) float64 { return r.SurfaceVariation })),
 		column[row]{

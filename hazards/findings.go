@@ -45,7 +45,7 @@ type Obstacle struct {
 	RockVolumeM3 float64   // between surface and face; for a recess the missing rock
 	RockShare    float64   // rock volume over the part of the ellipsoid on the same side of the face
 
-	InclinationDeg   float64 // of the steepest local plane, 90 vertical
+	InclinationDeg   float64 // 95th percentile of its local planes, 90 vertical
 	DipDirectionDeg  float64 // of the reference face, 0 where that is level
 	SurfaceVariation float64 // of all its voxels' local planes, median
 	Scattered        bool    // not a surface: vegetation, wires

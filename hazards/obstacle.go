@@ -15,6 +15,7 @@ import (
 const (
 	growShare     = 0.5  // hysteresis: a region grows down to this share of its threshold
 	scatteredFrom = 0.15 // median surface variation from which it is no surface; an isotropic cloud has 1/3
+	steepShare    = 0.95 // quantile of the local inclinations that stands for the steepest: one noisy plane does not
 	volumeGap     = 1e-6 // relative, of the enclosing ellipsoid
 )
 
@@ -172,62 +173,6 @@ func (s *Surface) area(set []int32) float64 {
 	return sum
 }
 
-// reach is the horizontal distance from lip to back of an overhanging set: the
-// greatest extent along its mean outward azimuth within one vertical slice
-// three spacings wide, so that a band around a curved wall does not count its
-// curvature. A level roof has no outward azimuth: there it is the extent across
-// the roof, which a rope would have to pass at least.
-func (s *Surface) reach(set []int32) float64 {
-	var out r3.Vec
-	for _, i := range set {
-		n := s.Relief.Normal[i]
-		if n == (r3.Vec{}) {
-			n = s.Planes.Normal[i]
-		}
-		out = r3.Add(out, r3.Vec{X: n.X, Y: n.Y})
-	}
-	if r3.Norm(out) < levelShare*float64(len(set)) {
-		out = s.narrowest(set)
-	}
-	out = r3.Unit(out)
-	width := 3 * s.Voxels.Lattice.SpacingM()
-	type stretch struct{ lo, hi float64 }
-	strips := map[int]stretch{}
-	origin := s.Index.Mean(int(set[0]))
-	var most float64
-	for _, i := range set {
-		d := r3.Sub(s.Index.Mean(int(i)), origin)
-		along, across := d.X*out.X+d.Y*out.Y, d.X*out.Y-d.Y*out.X
-		k := int(math.Floor(across / width))
-		e, ok := strips[k]
-		if !ok {
-			e = stretch{along, along}
-		}
-		e = stretch{min(e.lo, along), max(e.hi, along)}
-		strips[k] = e
-		most = max(most, e.hi-e.lo)
-	}
-	return most
-}
-
-// levelShare is the least horizontal part of a mean outward normal that tells an
-// azimuth: it belongs to a roof inclined by 5°, and is well above the noise of
-// normals.
-const levelShare = 0.087
-
-// narrowest is the horizontal direction in which a set is narrowest.
-func (s *Surface) narrowest(set []int32) r3.Vec {
-	origin := s.Index.Mean(int(set[0]))
-	var x, y, xx, xy, yy float64
-	for _, i := range set {
-		d := r3.Sub(s.Index.Mean(int(i)), origin)
-		x, y, xx, xy, yy = x+d.X, y+d.Y, xx+d.X*d.X, xy+d.X*d.Y, yy+d.Y*d.Y
-	}
-	n := float64(len(set))
-	sin, cos := math.Sincos(math.Atan2(2*(xy-x*y/n), xx-x*x/n-(yy-y*y/n)) / 2)
-	return r3.Vec{X: -sin, Y: cos} // across the longer principal axis
-}
-
 // mergeShared makes one region of the bulges and overhangs that share voxels,
 // directly or through others.
 func mergeShared(bulges [][]int32, overhangs []region) []region {
@@ -380,6 +325,7 @@ func (s *Surface) measure(o *Obstacle, r *region) {
 	}
 	furthest := math.Inf(-1)
 	var variation []float32
+	var inclination []float64
 	for _, i := range r.voxels {
 		n := s.Planes.Normal[i]
 		area := columnArea(s.Index, n, int(i), in)
@@ -403,7 +349,7 @@ func (s *Surface) measure(o *Obstacle, r *region) {
 		// undersides count against what they hide.
 		o.RockVolumeM3 += out * area * r3.Dot(n, face)
 		if s.Planes.Fitted(int(i)) {
-			o.InclinationDeg = max(o.InclinationDeg, fit.InclinationDeg(n))
+			inclination = append(inclination, fit.InclinationDeg(n))
 			variation = append(variation, s.Planes.Variation[i])
 		}
 	}
@@ -414,6 +360,8 @@ func (s *Surface) measure(o *Obstacle, r *region) {
 	}
 	o.DipDirectionDeg, _ = fit.DipDirectionDeg(o.Face.Normal)
 	if len(variation) > 0 {
+		slices.Sort(inclination)
+		o.InclinationDeg = inclination[int(steepShare*float64(len(inclination)-1))]
 		slices.Sort(variation)
 		o.SurfaceVariation = float64(variation[len(variation)/2])
 		o.Scattered = o.SurfaceVariation >= scatteredFrom
