@@ -30,6 +30,12 @@ const (
 	// inclined up to 72° gives by facing up; a steeper one rather follows the
 	// pieces it touches.
 	decidedVote = 0.3
+	// A voxel speaks up with a vote of 0.5, which ground inclined up to 60° gives
+	// by facing up, or a steeper face with free space on one side; a piece is
+	// sure if a tenth of it does, on balance. A lone steep face may as well be
+	// the underside of something.
+	strongVote  = 0.5
+	strongShare = 0.1
 )
 
 // OrientCoarse turns the normals of planes, fitted at the voxels of x, to the
@@ -40,8 +46,8 @@ const (
 // from decided ones by the same propagation across the edges between. Sensors
 // are scanner positions in the working CRS and may be nil.
 //
-// It returns the share of the surface that lies in pieces with little evidence
-// that touch no decided one: their side is a guess.
+// It returns the share of the surface that is connected to no piece with strong
+// evidence: its side is a guess.
 func OrientCoarse(ctx context.Context, x *terrain.Index, planes *LocalPlanes, sensors []r3.Vec) (guessedShare float64, err error) {
 	known := make([]bool, x.Voxels().Len())
 	pieces, err := settle(ctx, x, planes, known, sensors)
@@ -50,29 +56,57 @@ func OrientCoarse(ctx context.Context, x *terrain.Index, planes *LocalPlanes, se
 	}
 	clear(known)
 	var fitted int
-	var decided []int32
+	var decided, sure []int32
 	for _, p := range pieces {
 		fitted += len(p.voxels)
-		if p.vote < decidedVote {
-			continue
+		if p.vote >= decidedVote {
+			decided = append(decided, p.voxels...)
 		}
-		for _, i := range p.voxels {
-			known[i] = true
+		// A sensor's word is enough.
+		if p.strong >= strongShare || len(sensors) > 0 && p.vote >= decidedVote {
+			sure = append(sure, p.voxels...)
 		}
-		decided = append(decided, p.voxels...)
 	}
 	if fitted == 0 {
 		return 0, nil
 	}
-	reached, err := propagate(ctx, x, planes, known, decided, 0)
-	return 1 - float64(len(reached))/float64(fitted), err
+	for _, i := range decided {
+		known[i] = true
+	}
+	if _, err := propagate(ctx, x, planes, known, decided, 0); err != nil {
+		return 0, err
+	}
+	return 1 - float64(countConnected(x, planes, sure))/float64(fitted), nil
+}
+
+// countConnected counts the fitted voxels that steps between neighbours connect
+// to one of the seeds, and the seeds.
+func countConnected(x *terrain.Index, planes *LocalPlanes, seeds []int32) int {
+	seen := make([]bool, x.Voxels().Len())
+	next := append([]int32(nil), seeds...)
+	for _, i := range seeds {
+		seen[i] = true
+	}
+	count := 0
+	for ; len(next) > 0; count++ {
+		i := next[len(next)-1]
+		next = next[:len(next)-1]
+		neighbours(x, int(i), func(j int) {
+			if !seen[j] && planes.Fitted(j) {
+				seen[j] = true
+				next = append(next, int32(j))
+			}
+		})
+	}
+	return count
 }
 
 // A piece is a smoothly connected set of voxels, turned to the side that its
-// evidence speaks for, with the mean vote for that side.
+// evidence speaks for, with the mean vote for that side and the share of strong
+// votes for it, less those against it.
 type piece struct {
-	voxels []int32
-	vote   float64
+	voxels       []int32
+	vote, strong float64
 }
 
 // settle splits the fitted voxels that are not known into pieces, turns each to
@@ -91,16 +125,23 @@ func settle(ctx context.Context, x *terrain.Index, planes *LocalPlanes, known []
 		if err != nil {
 			return nil, err
 		}
-		var votes float64
+		p := piece{voxels: voxels}
 		for _, i := range voxels {
-			votes += evidence(x, planes.Normal[i], int(i), sensors)
+			vote := evidence(x, planes.Normal[i], int(i), sensors)
+			p.vote += vote
+			if math.Abs(vote) >= strongVote {
+				p.strong += math.Copysign(1, vote)
+			}
 		}
-		if votes < 0 {
+		if p.vote < 0 {
+			p.vote, p.strong = -p.vote, -p.strong
 			for _, i := range voxels {
 				flip(planes, int(i))
 			}
 		}
-		pieces = append(pieces, piece{voxels, math.Abs(votes) / float64(len(voxels))})
+		p.vote /= float64(len(voxels))
+		p.strong /= float64(len(voxels))
+		pieces = append(pieces, p)
 	}
 	return pieces, nil
 }

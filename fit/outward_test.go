@@ -246,3 +246,23 @@ func TestOrientStops(t *testing.T) {
 		t.Errorf("OrientFrom: error %v, want canceled", err)
 	}
 }
+
+// A face that stands alone may be a wall seen from below or the underside of
+// something: it counts as a guess until a scanner position tells.
+func TestOrientLoneFace(t *testing.T) {
+	// Leans out over the viewer by 15°.
+	face := sheetOf{r3.Vec{}, r3.Vec{X: 8}, r3.Vec{Y: -2, Z: 7.7}}
+	points := scan(rand.New(rand.NewPCG(1, 2)), 400, face)
+	if _, _, guessed := orientAll(t, points, nil, 2); guessed < 0.99 {
+		t.Errorf("%.2f of a lone face is guessed, want all", guessed)
+	}
+	below := []r3.Vec{r3.Add(origin(), r3.Vec{X: 4, Y: -10, Z: -2})}
+	x, planes, guessed := orientAll(t, points, below, 2)
+	if guessed > 0 {
+		t.Errorf("%.2f is guessed though a scanner saw it", guessed)
+	}
+	i := x.Nearest(r3.Add(origin(), r3.Vec{X: 4, Y: -1, Z: 3.85}), 0.3)
+	if got := InclinationDeg(planes.Normal[i]); math.Abs(got-104.6) > 1 {
+		t.Errorf("inclination %.1f°, want 104.6°", got)
+	}
+}
