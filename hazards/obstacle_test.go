@@ -122,8 +122,8 @@ func astride(a, b attitude) attitude {
 
 // Corners, crests, feet and gentle curvature are no obstacles.
 func TestPlainSlopesCarryNothing(t *testing.T) {
-	for _, sh := range shapes() {
-		for _, azimuth := range []float64{0, 37, 231} {
+	for i, sh := range shapes() {
+		for _, azimuth := range []float64{0, []float64{37, 231}[i%2]} {
 			t.Run(fmt.Sprintf("%s at %g°", sh.name, azimuth), func(t *testing.T) {
 				t.Parallel()
 				v := standard(azimuth)
