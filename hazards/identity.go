@@ -12,7 +12,9 @@ import (
 
 // Prefixes of ids, one for each kind of thing.
 const (
-	obstaclePrefix = "ob"
+	bulgePrefix    = "bu" // overhanging ones too: a lip that comes or goes keeps the id
+	overhangPrefix = "ov"
+	recessPrefix   = "re"
 	patchPrefix    = "pa"
 	zonePrefix     = "zo"
 )

@@ -36,7 +36,7 @@ func TestIDDependsOn(t *testing.T) {
 	c := terrain.Cell{I: 1, J: 2, K: 3}
 	add(ID(patchPrefix, l, c))
 	add(ID(zonePrefix, l, c))
-	add(ID(obstaclePrefix, l, c))
+	add(ID(bulgePrefix, l, c))
 	add(ID(patchPrefix, lattice(t, 0.1), c))
 	for _, d := range []terrain.Cell{{I: 2, J: 1, K: 3}, {I: 1, J: 3, K: 2}, {I: -1, J: 2, K: 3}, {}} {
 		add(ID(patchPrefix, l, d))

@@ -4,6 +4,7 @@ import (
 	"context"
 	"math"
 	"slices"
+	"strings"
 
 	"gonum.org/v1/gonum/spatial/r3"
 
@@ -31,7 +32,6 @@ func FindObstacles(ctx context.Context, s *Surface) ([]Obstacle, error) {
 		return nil, err
 	}
 	var found []Obstacle
-	var cells []terrain.Cell
 	for i := range regions {
 		if err := ctx.Err(); err != nil {
 			return nil, err
@@ -41,18 +41,29 @@ func FindObstacles(ctx context.Context, s *Surface) ([]Obstacle, error) {
 			return nil, err
 		}
 		found = append(found, o)
-		cells = append(cells, s.Voxels.Lattice.CellOf(o.Top))
 	}
-	for i, id := range IDs(obstaclePrefix, s.Voxels.Lattice, cells) {
-		found[i].ID = id
-	}
-	slices.SortFunc(found, func(a, b Obstacle) int {
-		if a.ID < b.ID {
-			return -1
-		}
-		return 1
-	})
+	s.name(found)
+	slices.SortFunc(found, func(a, b Obstacle) int { return strings.Compare(a.ID, b.ID) })
 	return found, nil
+}
+
+// name gives each obstacle an id made of its kind and the cell of its top.
+func (s *Surface) name(found []Obstacle) {
+	for prefix, kinds := range map[string][]Kind{
+		bulgePrefix: {Bulge, OverhangingBulge}, overhangPrefix: {Overhang}, recessPrefix: {Recess},
+	} {
+		var which []int
+		var cells []terrain.Cell
+		for i := range found {
+			if slices.Contains(kinds, found[i].Kind) {
+				which = append(which, i)
+				cells = append(cells, s.Voxels.Lattice.CellOf(found[i].Top))
+			}
+		}
+		for n, id := range IDs(prefix, s.Voxels.Lattice, cells) {
+			found[which[n]].ID = id
+		}
+	}
 }
 
 // A region is a connected set of voxels of one kind.
