@@ -5,7 +5,6 @@ import (
 	"errors"
 	"math"
 	"slices"
-	"sync"
 
 	"gonum.org/v1/gonum/spatial/r3"
 
@@ -36,12 +35,12 @@ var ErrCrowded = errors.New("fit: too many points within the radius for exact su
 // FitLocal fits a plane around the mean of every voxel of at, to all raw points
 // of those voxels of members whose mean lies within radiusM of it. Members may
 // be the same voxels or a coarser level of the pyramid: the sums are exact
-// either way, only the edge of the neighbourhood is rougher. workers goroutines
-// share the work; the result does not depend on their number.
+// either way, only the edge of the neighbourhood is rougher. The result does not
+// depend on how the work is shared; progress counts voxels of at.
 //
 // Cost per voxel is one pass over the members within reach, whose sums have
 // been shifted, exactly, to one common centre per tile beforehand.
-func FitLocal(ctx context.Context, at *terrain.Voxels, members *terrain.Index, radiusM float64, workers int) (*LocalPlanes, error) {
+func FitLocal(ctx context.Context, at *terrain.Voxels, members *terrain.Index, radiusM float64, work Work) (*LocalPlanes, error) {
 	if !(radiusM <= maxRadiusCells*members.Voxels().Lattice.SpacingM()) {
 		return nil, ErrCrowded
 	}
@@ -52,7 +51,8 @@ func FitLocal(ctx context.Context, at *terrain.Voxels, members *terrain.Index, r
 		Points: make([]int64, n), Voxels: make([]int32, n),
 	}
 	tiles := tilesOf(at, radiusM)
-	err := inParallel(ctx, len(tiles), workers, func() func(int) error {
+	size := func(i int) int { return len(tiles[i]) }
+	err := work.Each(ctx, len(tiles), size, func() func(int) error {
 		w := &localWorker{at: at, members: members, out: out, radius: radiusM}
 		return func(i int) error { return w.tile(ctx, tiles[i]) }
 	})
@@ -107,45 +107,6 @@ func floorDiv(a, b int32) int32 {
 		q--
 	}
 	return q
-}
-
-// inParallel calls the function that newWorker returns for every i in [0, n),
-// from workers goroutines, until one fails or ctx ends.
-func inParallel(ctx context.Context, n, workers int, newWorker func() func(i int) error) error {
-	var (
-		wg    sync.WaitGroup
-		mu    sync.Mutex
-		next  int
-		first error
-	)
-	take := func() int {
-		mu.Lock()
-		defer mu.Unlock()
-		if first == nil {
-			first = ctx.Err()
-		}
-		if first != nil || next == n {
-			return -1
-		}
-		next++
-		return next - 1
-	}
-	for range max(1, workers) {
-		wg.Go(func() {
-			work := newWorker()
-			for i := take(); i >= 0; i = take() {
-				if err := work(i); err != nil {
-					mu.Lock()
-					if first == nil {
-						first = err
-					}
-					mu.Unlock()
-				}
-			}
-		})
-	}
-	wg.Wait()
-	return first
 }
 
 // member is one voxel of a tile and its halo: its mean relative to the tile's

@@ -54,7 +54,7 @@ func TestFitLocalAgainstBruteForce(t *testing.T) {
 		byCell[c] = append(byCell[c], p)
 	}
 	const radius = 0.45
-	got, err := FitLocal(ctx, v, terrain.NewIndex(v), radius, 2)
+	got, err := FitLocal(ctx, v, terrain.NewIndex(v), radius, Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -111,12 +111,12 @@ func TestFitLocalIndependentOfWorkers(t *testing.T) {
 	ctx := context.Background()
 	v := sumPoints(t, 0.05, roughWall(40000, 2))
 	x := terrain.NewIndex(v)
-	want, err := FitLocal(ctx, v, x, 0.3, 1)
+	want, err := FitLocal(ctx, v, x, 0.3, Work{Workers: 1})
 	if err != nil {
 		t.Fatal(err)
 	}
 	for workers := 2; workers <= 4; workers++ {
-		got, err := FitLocal(ctx, v, x, 0.3, workers)
+		got, err := FitLocal(ctx, v, x, 0.3, Work{Workers: workers})
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -144,7 +144,7 @@ func TestFitLocalCoarserMembers(t *testing.T) {
 		t.Fatal(err)
 	}
 	for level, m := range levels {
-		got, err := FitLocal(ctx, v, terrain.NewIndex(m), 1.5, 2)
+		got, err := FitLocal(ctx, v, terrain.NewIndex(m), 1.5, Work{Workers: 2})
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -169,7 +169,7 @@ func TestFitLocalDegenerate(t *testing.T) {
 	} {
 		t.Run(name, func(t *testing.T) {
 			v := sumPoints(t, 0.1, points)
-			p, err := FitLocal(context.Background(), v, terrain.NewIndex(v), 0.5, 1)
+			p, err := FitLocal(context.Background(), v, terrain.NewIndex(v), 0.5, Work{Workers: 1})
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -186,7 +186,7 @@ func TestFitLocalStops(t *testing.T) {
 	v := sumPoints(t, 0.05, roughWall(20000, 3))
 	ctx, cancel := context.WithCancel(context.Background())
 	cancel()
-	if _, err := FitLocal(ctx, v, terrain.NewIndex(v), 0.3, 2); !errors.Is(err, context.Canceled) {
+	if _, err := FitLocal(ctx, v, terrain.NewIndex(v), 0.3, Work{Workers: 2}); !errors.Is(err, context.Canceled) {
 		t.Errorf("error %v, want canceled", err)
 	}
 }
@@ -220,7 +220,7 @@ func TestFitLocalCrowded(t *testing.T) {
 		for i := range v.Moments[:4] {
 			v.Moments[i].N = n
 		}
-		if _, err := FitLocal(context.Background(), v, terrain.NewIndex(v), 5, 2); !errors.Is(err, ErrCrowded) {
+		if _, err := FitLocal(context.Background(), v, terrain.NewIndex(v), 5, Work{Workers: 2}); !errors.Is(err, ErrCrowded) {
 			t.Errorf("%d points: error %v, want ErrCrowded", n, err)
 		}
 	}
@@ -231,7 +231,7 @@ func TestFitLocalCrowded(t *testing.T) {
 func TestFitLocalLargeRadius(t *testing.T) {
 	v := sumPoints(t, 0.005, []r3.Vec{{X: 0.012, Z: 0.001}, {X: 0.007, Y: 0.013}, {X: 0.021, Y: 0.002}, {Y: 0.031, Z: 0.002}, {X: 0.034, Y: 0.038}, {X: 0.002, Y: 0.003}})
 	x := terrain.NewIndex(v)
-	p, err := FitLocal(context.Background(), v, x, 400, 1)
+	p, err := FitLocal(context.Background(), v, x, 400, Work{Workers: 1})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -248,7 +248,7 @@ func TestFitLocalLargeRadius(t *testing.T) {
 		t.Errorf("%d columns over a survey of 8 cells square", n-1)
 	}
 	for _, radius := range []float64{1e4, 1e12, math.Inf(1), math.NaN()} {
-		if _, err := FitLocal(context.Background(), v, x, radius, 1); !errors.Is(err, ErrCrowded) {
+		if _, err := FitLocal(context.Background(), v, x, radius, Work{Workers: 1}); !errors.Is(err, ErrCrowded) {
 			t.Errorf("radius %g: error %v, want ErrCrowded", radius, err)
 		}
 	}
@@ -269,7 +269,7 @@ func BenchmarkFitLocal(b *testing.B) {
 			b.ReportAllocs()
 			var members int64
 			for range b.N {
-				p, err := FitLocal(context.Background(), v, x, 0.22, workers)
+				p, err := FitLocal(context.Background(), v, x, 0.22, Work{Workers: workers})
 				if err != nil {
 					b.Fatal(err)
 				}

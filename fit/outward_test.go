@@ -63,7 +63,7 @@ func orientAll(t *testing.T, points []r3.Vec, sensors []r3.Vec, workers int) (*t
 	}
 	top := len(levels) - 1
 	coarse := terrain.NewIndex(levels[top])
-	coarsePlanes, err := FitLocal(ctx, coarse.Voxels(), coarse, 1.2, workers)
+	coarsePlanes, err := FitLocal(ctx, coarse.Voxels(), coarse, 1.2, Work{Workers: workers})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -79,7 +79,7 @@ func orientAll(t *testing.T, points []r3.Vec, sensors []r3.Vec, workers int) (*t
 		}
 	}
 	x := terrain.NewIndex(v)
-	planes, err := FitLocal(ctx, v, x, 0.4, workers)
+	planes, err := FitLocal(ctx, v, x, 0.4, Work{Workers: workers})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -232,7 +232,7 @@ func TestOrientIndependentOfWorkersAndOrder(t *testing.T) {
 func TestOrientStops(t *testing.T) {
 	v := sumPoints(t, 0.1, roughWall(20000, 1))
 	x := terrain.NewIndex(v)
-	planes, err := FitLocal(context.Background(), v, x, 0.4, 1)
+	planes, err := FitLocal(context.Background(), v, x, 0.4, Work{Workers: 1})
 	if err != nil {
 		t.Fatal(err)
 	}

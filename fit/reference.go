@@ -45,11 +45,15 @@ type ReliefInput struct {
 // that they bound: the larger of the two distances at an outer corner or crest,
 // the smaller at an inner corner or foot; on the step between two parallel
 // faces it is zero. A voxel that lies on a face is measured against that alone.
-func FindRelief(ctx context.Context, in *ReliefInput, workers int) (*Relief, error) {
+//
+// The result does not depend on how the work is shared; progress counts voxels
+// of At.
+func FindRelief(ctx context.Context, in *ReliefInput, work Work) (*Relief, error) {
 	n := in.At.Len()
 	out := &Relief{Height: make([]float64, n), Normal: make([]r3.Vec, n)}
 	children, starts := groupBy(in.Centre, in.Centres.Len())
-	err := inParallel(ctx, in.Centres.Len(), workers, func() func(int) error {
+	size := func(i int) int { return int(starts[i+1] - starts[i]) }
+	err := work.Each(ctx, in.Centres.Len(), size, func() func(int) error {
 		w := &reliefWorker{in: in, out: out}
 		return func(i int) error {
 			w.around(i, children[starts[i]:starts[i+1]])

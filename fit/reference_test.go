@@ -29,7 +29,7 @@ func reliefOf(t *testing.T, ctx context.Context, points []r3.Vec, workers int) (
 		}
 	}
 	members := terrain.NewIndex(levels[1])
-	planes, err := FitLocal(context.Background(), levels[1], terrain.NewIndex(v), 0.4, workers)
+	planes, err := FitLocal(context.Background(), levels[1], terrain.NewIndex(v), 0.4, Work{Workers: workers})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -39,7 +39,7 @@ func reliefOf(t *testing.T, ctx context.Context, points []r3.Vec, workers int) (
 	}
 	r, err := FindRelief(ctx, &ReliefInput{
 		At: v, Members: members, Planes: planes, Centres: levels[3], Centre: centre, RadiusM: testRadiusM, ProudM: testProudM,
-	}, workers)
+	}, Work{Workers: workers})
 	return v, r, err
 }
 

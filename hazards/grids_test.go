@@ -107,7 +107,7 @@ func gridSurface(t *testing.T, path string, band int) *hazards.Surface {
 		t.Fatalf("%d of %d cells in voxels", v.Points(), counts.Read)
 	}
 	o, _ := hazards.ObstacleOptions{}.Resolve(l.SpacingM())
-	s, err := hazards.NewSurface(ctx, v, nil, o, 2)
+	s, err := hazards.NewSurface(ctx, v, nil, o, fit.Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -215,7 +215,7 @@ func TestGridSlope(t *testing.T) {
 	if s.Voxels.Lattice.SpacingM() != g || s.Planes.RadiusM != 4*g {
 		t.Fatalf("spacing %g m, surface radius %g m", s.Voxels.Lattice.SpacingM(), s.Planes.RadiusM)
 	}
-	near, err := fit.FitLocal(context.Background(), s.Voxels, s.Index, 2*g, 2)
+	near, err := fit.FitLocal(context.Background(), s.Voxels, s.Index, 2*g, fit.Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -349,7 +349,7 @@ func TestGridsInDegrees(t *testing.T) {
 				}
 			}
 			g := s.Voxels.Lattice.SpacingM()
-			near, err := fit.FitLocal(context.Background(), s.Voxels, s.Index, 2*g, 2)
+			near, err := fit.FitLocal(context.Background(), s.Voxels, s.Index, 2*g, fit.Work{Workers: 2})
 			if err != nil {
 				t.Fatal(err)
 			}

@@ -326,7 +326,7 @@ func TestLevelRoof(t *testing.T) {
 		}
 		o, _ := ObstacleOptions{}.Resolve(g)
 		ctx := context.Background()
-		s, err := NewSurface(ctx, voxelise(t, g, points), []r3.Vec{r3.Add(at, r3.Vec{X: 1, Y: 0.5, Z: -10})}, o, 1)
+		s, err := NewSurface(ctx, voxelise(t, g, points), []r3.Vec{r3.Add(at, r3.Vec{X: 1, Y: 0.5, Z: -10})}, o, fit.Work{Workers: 1})
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -389,7 +389,7 @@ func TestObstaclesIndependentOfWorkers(t *testing.T) {
 	o, _ := ObstacleOptions{}.Resolve(v.spacingM)
 	var want []Obstacle
 	for workers := 1; workers <= 3; workers++ {
-		surface, err := NewSurface(ctx, x, nil, o, workers)
+		surface, err := NewSurface(ctx, x, nil, o, fit.Work{Workers: workers})
 		if err != nil {
 			t.Fatal(err)
 		}

@@ -6,8 +6,6 @@ import (
 	"math"
 	"slices"
 	"strings"
-	"sync"
-	"sync/atomic"
 
 	"gonum.org/v1/gonum/spatial/r3"
 
@@ -22,8 +20,9 @@ import (
 // Planes are the local planes of the voxels of s at p's footprint radius, with
 // outward normals; FindPatches panics if their radius is another. Obstacles
 // limit the clearance and may be nil. The profile must be valid. Arguments are
-// read only; workers goroutines share the work, and the result does not depend
-// on their number. The only error is ctx's.
+// read only. The result does not depend on how the work is shared; progress
+// counts the voxels whose plane and clearance leave hope. The only error is
+// ctx's.
 //
 // The disc at a voxel is centred on the foot of its mean on its plane and lies
 // in that plane. Voxels belong to it if their mean lies within the radius of
@@ -50,12 +49,12 @@ import (
 //     the place of the disc go in steps of a voxel. It is never more than the
 //     distance from the rim: a disc lies within the ball of its radius. It is
 //     as low as minus the radius inside an obstacle, +Inf without obstacles.
-func FindPatches(ctx context.Context, s *Surface, planes *fit.LocalPlanes, obstacles []Obstacle, p *Profile, workers int) ([]Patch, []Zone, error) {
+func FindPatches(ctx context.Context, s *Surface, planes *fit.LocalPlanes, obstacles []Obstacle, p *Profile, work fit.Work) ([]Patch, []Zone, error) {
 	if planes.RadiusM != p.FootprintRadiusM {
 		panic(fmt.Sprintf("hazards: planes of radius %g m for a footprint of %g m", planes.RadiusM, p.FootprintRadiusM))
 	}
 	j := newJudge(s, planes, obstacles, p)
-	scores, err := j.scores(ctx, workers)
+	scores, err := j.scores(ctx, work)
 	if err != nil {
 		return nil, nil, err
 	}
@@ -109,7 +108,7 @@ func newJudge(s *Surface, planes *fit.LocalPlanes, obstacles []Obstacle, p *Prof
 const chunkVoxels = 4096
 
 // scores returns the score of the footprint at every voxel.
-func (j *judge) scores(ctx context.Context, workers int) ([]float64, error) {
+func (j *judge) scores(ctx context.Context, work fit.Work) ([]float64, error) {
 	scores := make([]float64, j.voxels.Len())
 	var hopeful []int32
 	for v := range scores {
@@ -121,22 +120,15 @@ func (j *judge) scores(ctx context.Context, workers int) ([]float64, error) {
 		}
 	}
 	tiles := j.tiles(hopeful)
-	var next atomic.Int64
-	var wg sync.WaitGroup
-	for range max(1, workers) {
-		wg.Go(func() {
-			g := &gathering{j: j}
-			for ctx.Err() == nil {
-				t := int(next.Add(1)) - 1
-				if t >= len(tiles) {
-					return
-				}
-				j.scoreTile(ctx, scores, tiles[t], g)
-			}
-		})
-	}
-	wg.Wait()
-	return scores, ctx.Err()
+	size := func(i int) int { return len(tiles[i]) }
+	err := work.Each(ctx, len(tiles), size, func() func(int) error {
+		g := &gathering{j: j}
+		return func(i int) error {
+			j.scoreTile(ctx, scores, tiles[i], g)
+			return ctx.Err()
+		}
+	})
+	return scores, err
 }
 
 // scoreTile fills in the scores of the given voxels of one tile, unless ctx

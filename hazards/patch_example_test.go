@@ -6,6 +6,7 @@ import (
 
 	"gonum.org/v1/gonum/spatial/r3"
 
+	"ledgework/fit"
 	"ledgework/hazards"
 	"ledgework/terrain"
 )
@@ -34,7 +35,7 @@ func ExampleFindPatches() {
 	profile, _ := hazards.Example("ledge")
 	options, _ := hazards.ObstacleOptions{}.Resolve(0.05)
 	above := []r3.Vec{{X: 1.5, Y: 1.5, Z: 10}} // a scanner
-	surface, err := hazards.NewSurface(ctx, voxels, above, options, 1)
+	surface, err := hazards.NewSurface(ctx, voxels, above, options, fit.Work{Workers: 1})
 	if err != nil {
 		fmt.Println(err)
 		return
@@ -44,7 +45,7 @@ func ExampleFindPatches() {
 		fmt.Println(err)
 		return
 	}
-	patches, zones, err := hazards.FindPatches(ctx, surface, planes, nil, &profile, 1)
+	patches, zones, err := hazards.FindPatches(ctx, surface, planes, nil, &profile, fit.Work{Workers: 1})
 	if err != nil {
 		fmt.Println(err)
 		return

@@ -54,7 +54,7 @@ func newGround(t testing.TB, g, radius float64, air r3.Vec, points []r3.Vec) gro
 	t.Helper()
 	v := voxelise(t, g, points)
 	x := terrain.NewIndex(v)
-	planes, err := fit.FitLocal(context.Background(), v, x, radius, 1)
+	planes, err := fit.FitLocal(context.Background(), v, x, radius, fit.Work{Workers: 1})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -193,7 +193,7 @@ func TestFindPatchesScoreByHand(t *testing.T) {
 		Centre: ball, SemiAxes: [3]float64{0.7, 0.7, 0.7},
 		Axes: [3]r3.Vec{{X: 1}, {Y: 1}, {Z: 1}},
 	}}}
-	patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, obstacles, p, 2)
+	patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, obstacles, p, fit.Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -227,7 +227,7 @@ func TestFindPatchesWithoutObstacles(t *testing.T) {
 	rng := rand.New(rand.NewPCG(1, 1))
 	g := newGround(t, 0.05, 0.4, r3.Vec{Z: 1}, sheet(rng, r3.Vec{}, r3.Vec{Z: 1}, 1, 1, 0.01, flat))
 	p, _ := Example("ledge")
-	patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, &p, 1)
+	patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, &p, fit.Work{Workers: 1})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -266,7 +266,7 @@ func rubble(t testing.TB, half float64) (ground, []Obstacle) {
 func TestFindPatchesDoesNotDependOnWorkers(t *testing.T) {
 	g, obstacles := rubble(t, 3)
 	p, _ := Example("ledge")
-	patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, obstacles, &p, 1)
+	patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, obstacles, &p, fit.Work{Workers: 1})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -274,7 +274,7 @@ func TestFindPatchesDoesNotDependOnWorkers(t *testing.T) {
 		t.Fatalf("%d patches, %d zones: the scene is too bad to test on", len(patches), len(zones))
 	}
 	for _, workers := range []int{0, 2, 3} {
-		p2, z2, err := FindPatches(context.Background(), g.surface, g.planes, obstacles, &p, workers)
+		p2, z2, err := FindPatches(context.Background(), g.surface, g.planes, obstacles, &p, fit.Work{Workers: workers})
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -289,12 +289,12 @@ func TestFindPatchesDoesNotDependOnWorkers(t *testing.T) {
 func TestPatchesWithinLimits(t *testing.T) {
 	g, obstacles := rubble(t, 3)
 	p, _ := Example("ledge")
-	patches, _, err := FindPatches(context.Background(), g.surface, g.planes, obstacles, &p, 2)
+	patches, _, err := FindPatches(context.Background(), g.surface, g.planes, obstacles, &p, fit.Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}
 	j := newJudge(g.surface, g.planes, obstacles, &p)
-	scores, err := j.scores(context.Background(), 1)
+	scores, err := j.scores(context.Background(), fit.Work{Workers: 1})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -332,7 +332,7 @@ func TestFindPatchesCancelled(t *testing.T) {
 	p, _ := Example("ledge")
 	ctx, cancel := context.WithCancel(context.Background())
 	cancel()
-	if _, _, err := FindPatches(ctx, g.surface, g.planes, obstacles, &p, 2); !errors.Is(err, context.Canceled) {
+	if _, _, err := FindPatches(ctx, g.surface, g.planes, obstacles, &p, fit.Work{Workers: 2}); !errors.Is(err, context.Canceled) {
 		t.Errorf("got %v, want cancelled", err)
 	}
 }
@@ -342,7 +342,7 @@ func TestPatchesAndZonesCancelled(t *testing.T) {
 	g, obstacles := rubble(t, 2)
 	p, _ := Example("ledge")
 	j := newJudge(g.surface, g.planes, obstacles, &p)
-	scores, err := j.scores(context.Background(), 1)
+	scores, err := j.scores(context.Background(), fit.Work{Workers: 1})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -364,7 +364,7 @@ func TestFindPatchesNothing(t *testing.T) {
 		"coarse": newGround(t, 10, 0.4, r3.Vec{Z: 1}, sheet(rand.New(rand.NewPCG(1, 1)), r3.Vec{}, r3.Vec{Z: 1}, 50, 50, 5, flat)),
 		"empty":  newGround(t, 0.05, 0.4, r3.Vec{Z: 1}, nil),
 	} {
-		patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, &p, 1)
+		patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, &p, fit.Work{Workers: 1})
 		if err != nil || len(patches) != 0 || len(zones) != 0 {
 			t.Errorf("%s: %d patches, %d zones, %v", name, len(patches), len(zones), err)
 		}
@@ -379,7 +379,7 @@ func TestFindPatchesOtherRadius(t *testing.T) {
 	}()
 	p, _ := Example("ledge")
 	g := newGround(t, 0.05, 0.5, r3.Vec{Z: 1}, nil)
-	FindPatches(context.Background(), g.surface, g.planes, nil, &p, 1)
+	FindPatches(context.Background(), g.surface, g.planes, nil, &p, fit.Work{Workers: 1})
 }
 
 // benchmarkScores times the judgement of every voxel.
@@ -394,7 +394,7 @@ func benchmarkScores(b *testing.B, name string, spacing float64) {
 	b.ReportAllocs()
 	b.ResetTimer()
 	for range b.N {
-		if _, _, err := FindPatches(context.Background(), g.surface, g.planes, nil, &p, 1); err != nil {
+		if _, _, err := FindPatches(context.Background(), g.surface, g.planes, nil, &p, fit.Work{Workers: 1}); err != nil {
 			b.Fatal(err)
 		}
 	}

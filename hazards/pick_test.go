@@ -6,6 +6,8 @@ import (
 	"testing"
 
 	"gonum.org/v1/gonum/spatial/r3"
+
+	"ledgework/fit"
 )
 
 // The picked set is what the definition gives when every pair is looked at:
@@ -14,7 +16,7 @@ func TestPickAgainstDefinition(t *testing.T) {
 	g, obstacles := rubble(t, 1.5)
 	p, _ := Example("ledge")
 	j := newJudge(g.surface, g.planes, obstacles, &p)
-	scores, err := j.scores(context.Background(), 2)
+	scores, err := j.scores(context.Background(), fit.Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}

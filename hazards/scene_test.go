@@ -8,6 +8,7 @@ import (
 
 	"gonum.org/v1/gonum/spatial/r3"
 
+	"ledgework/fit"
 	"ledgework/terrain"
 )
 
@@ -217,7 +218,7 @@ func (v survey) examine(t testing.TB, s scene, towards r3.Vec) (*Surface, []Obst
 	if towards != (r3.Vec{}) {
 		sensors = []r3.Vec{v.place(r3.Scale(60, r3.Unit(towards)))}
 	}
-	surface, err := NewSurface(ctx, v.voxels(t, s), sensors, o, 2)
+	surface, err := NewSurface(ctx, v.voxels(t, s), sensors, o, fit.Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -17,6 +17,9 @@ type Surface struct {
 	Planes *fit.LocalPlanes // at the surface radius, outward
 	Relief *fit.Relief      // nil until MeasureRelief
 
+	// Work is how the methods share out what they do. Progress counts voxels.
+	Work fit.Work
+
 	// GuessedShare is the share of the surface whose outward side nothing
 	// tells; scanner positions would.
 	GuessedShare float64
@@ -25,7 +28,6 @@ type Surface struct {
 	parents [][]int32
 	options ObstacleOptions
 	sensors []r3.Vec
-	workers int
 
 	// Members of the reference faces, and their planes, outward.
 	members       *terrain.Index
@@ -46,13 +48,13 @@ const (
 // NewSurface fits local planes at the surface radius to every voxel of v and
 // turns them outward. Sensors are scanner positions in the working CRS, nil if
 // unknown. Options must be resolved.
-func NewSurface(ctx context.Context, v *terrain.Voxels, sensors []r3.Vec, o ObstacleOptions, workers int) (*Surface, error) {
-	s := &Surface{Voxels: v, Index: terrain.NewIndex(v), options: o, sensors: sensors, workers: workers}
+func NewSurface(ctx context.Context, v *terrain.Voxels, sensors []r3.Vec, o ObstacleOptions, work fit.Work) (*Surface, error) {
+	s := &Surface{Voxels: v, Index: terrain.NewIndex(v), options: o, sensors: sensors, Work: work}
 	if err := s.buildLevels(); err != nil {
 		return nil, err
 	}
 	coarse := terrain.NewIndex(s.levels[s.centreLevel])
-	coarsePlanes, err := fit.FitLocal(ctx, coarse.Voxels(), coarse, coarseRadii*coarse.Voxels().Lattice.SpacingM(), workers)
+	coarsePlanes, err := fit.FitLocal(ctx, coarse.Voxels(), coarse, coarseRadii*coarse.Voxels().Lattice.SpacingM(), fit.Work{Workers: work.Workers})
 	if err != nil {
 		return nil, err
 	}
@@ -66,7 +68,7 @@ func NewSurface(ctx context.Context, v *terrain.Voxels, sensors []r3.Vec, o Obst
 		s.Planes = s.memberPlanes
 		return s, nil
 	}
-	if s.Planes, err = fit.FitLocal(ctx, v, s.Index, o.SurfaceRadiusM, workers); err != nil {
+	if s.Planes, err = fit.FitLocal(ctx, v, s.Index, o.SurfaceRadiusM, work); err != nil {
 		return nil, err
 	}
 	if err := fit.OrientFrom(ctx, s.Index, s.Planes, s.memberPlanes, s.ancestors(0, s.memberLevel), sensors); err != nil {
@@ -128,7 +130,7 @@ func (s *Surface) fitMembers(ctx context.Context, coarse *fit.LocalPlanes) error
 	}
 	radius := max(2*at.Lattice.SpacingM(), s.options.SurfaceRadiusM)
 	var err error
-	if s.memberPlanes, err = fit.FitLocal(ctx, at, from, radius, s.workers); err != nil {
+	if s.memberPlanes, err = fit.FitLocal(ctx, at, from, radius, fit.Work{Workers: s.Work.Workers}); err != nil {
 		return err
 	}
 	return fit.OrientFrom(ctx, s.members, s.memberPlanes, coarse, s.ancestors(s.memberLevel, s.centreLevel), s.sensors)
@@ -142,7 +144,7 @@ func (s *Surface) MeasureRelief(ctx context.Context) error {
 		Centres: s.levels[s.centreLevel], Centre: s.centreParents,
 		RadiusM: s.options.ReferenceRadiusM,
 		ProudM:  min(s.options.BulgeHeightM, s.options.RecessDepthM),
-	}, s.workers)
+	}, s.Work)
 	s.Relief = relief
 	return err
 }
@@ -163,7 +165,7 @@ func (s *Surface) PlanesAt(ctx context.Context, radiusM float64) (*fit.LocalPlan
 	if level > 0 {
 		members = terrain.NewIndex(s.levels[level])
 	}
-	p, err := fit.FitLocal(ctx, s.Voxels, members, radiusM, s.workers)
+	p, err := fit.FitLocal(ctx, s.Voxels, members, radiusM, s.Work)
 	if err != nil {
 		return nil, err
 	}

@@ -25,7 +25,7 @@ func cliffWithRoof() (s scene, roof, floor, back, front r3.Vec) {
 func build(t testing.TB, v *terrain.Voxels, sensors []r3.Vec, workers int) *Surface {
 	t.Helper()
 	o, _ := ObstacleOptions{}.Resolve(v.Lattice.SpacingM())
-	s, err := NewSurface(context.Background(), v, sensors, o, workers)
+	s, err := NewSurface(context.Background(), v, sensors, o, fit.Work{Workers: workers})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -198,7 +198,7 @@ func TestSurfaceStops(t *testing.T) {
 	s := build(t, x, nil, 2)
 	ctx, cancel := context.WithCancel(context.Background())
 	cancel()
-	if _, err := NewSurface(ctx, x, nil, s.options, 2); !errors.Is(err, context.Canceled) {
+	if _, err := NewSurface(ctx, x, nil, s.options, fit.Work{Workers: 2}); !errors.Is(err, context.Canceled) {
 		t.Errorf("NewSurface: error %v, want canceled", err)
 	}
 	if err := s.MeasureRelief(ctx); !errors.Is(err, context.Canceled) {

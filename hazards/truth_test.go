@@ -39,7 +39,7 @@ func newDemoRun(t *testing.T) *demoRun {
 	}
 	v, _ := terrain.Clean(a.Voxels())
 	o, _ := ObstacleOptions{}.Resolve(demoSpacingM)
-	s, err := NewSurface(ctx, v, season.Stations(), o, 2)
+	s, err := NewSurface(ctx, v, season.Stations(), o, fit.Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -266,7 +266,7 @@ func (r *demoRun) testLedges(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	patches, zones, err := FindPatches(ctx, r.surface, planes, r.found, &p, 2)
+	patches, zones, err := FindPatches(ctx, r.surface, planes, r.found, &p, fit.Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -9,6 +9,7 @@ import (
 
 	"gonum.org/v1/gonum/spatial/r3"
 
+	"ledgework/fit"
 	"ledgework/terrain"
 )
 
@@ -29,7 +30,7 @@ func TestZonesOnTwoLedges(t *testing.T) {
 	ledge(20, 7, 2, 1.4)
 	g := newGround(t, spacing, 0.4, r3.Vec{Y: -0.3, Z: 1}, points)
 	p, _ := Example("ledge")
-	patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, &p, 2)
+	patches, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, &p, fit.Work{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -101,7 +102,7 @@ func TestZoneAreaOfPlanes(t *testing.T) {
 		for _, noise := range []float64{0, 0.01} {
 			points := sheet(rng, r3.Vec{X: 0.013, Y: 0.021, Z: 0.017}, n, half, half, 0.008, func(a, b float64) (float64, bool) { return noise * rng.NormFloat64(), true })
 			g := newGround(t, 0.05, 0.3, n, points)
-			_, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, p, 2)
+			_, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, p, fit.Work{Workers: 2})
 			if err != nil || len(zones) != 1 {
 				t.Fatalf("%d zones, %v", len(zones), err)
 			}
@@ -122,7 +123,7 @@ func TestZoneAreaOfPlanes(t *testing.T) {
 			}
 		}
 		g := newGround(t, 1, 4, r3.Vec{Z: 1}, points)
-		_, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, lenient(4), 2)
+		_, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, lenient(4), fit.Work{Workers: 2})
 		if err != nil || len(zones) != 1 {
 			t.Fatalf("%d zones, %v", len(zones), err)
 		}

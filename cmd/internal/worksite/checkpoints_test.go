@@ -7,6 +7,7 @@ import (
 
 	"gonum.org/v1/gonum/spatial/r3"
 
+	"ledgework/fit"
 	"ledgework/hazards"
 	"ledgework/terrain"
 )
@@ -29,7 +30,7 @@ func slope(t *testing.T) *hazards.Surface {
 		t.Fatal(err)
 	}
 	options, _ := hazards.ObstacleOptions{}.Resolve(0.2)
-	s, err := hazards.NewSurface(context.Background(), v, nil, options, 1)
+	s, err := hazards.NewSurface(context.Background(), v, nil, options, fit.Work{Workers: 1})
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -9,6 +9,7 @@ import (
 	"gonum.org/v1/gonum/spatial/r3"
 
 	"ledgework/export"
+	"ledgework/fit"
 	"ledgework/hazards"
 )
 
@@ -102,7 +103,10 @@ func (w *Worksite) Run(ctx context.Context, o RunOptions) (*Result, error) {
 // judge finds obstacles, patches and zones on the ground. It is the one place
 // that calls on fits and judgements.
 func (r *run) judge(ctx context.Context) error {
-	v, threads := r.ground.voxels, r.opts.Threads
+	v := r.ground.voxels
+	work := fit.Work{Workers: r.opts.Threads, Progress: func(done, total int) {
+		r.opts.Progress.Set(int64(float64(done) / float64(total) * float64(v.Len())))
+	}}
 	var notes []string
 	r.options, notes = r.Obstacles.options(max(0, r.Platform.ClearanceM.Allowed)).Resolve(v.Lattice.SpacingM())
 	r.warn(notes...)
@@ -115,8 +119,8 @@ func (r *run) judge(ctx context.Context) error {
 		surface *hazards.Surface
 		err     error
 	)
-	err = r.stages.do(ctx, "local planes", 0, Voxels, func() (string, error) {
-		surface, err = hazards.NewSurface(ctx, v, sensors, r.options, threads)
+	err = r.stages.do(ctx, "local planes", int64(v.Len()), Voxels, func() (string, error) {
+		surface, err = hazards.NewSurface(ctx, v, sensors, r.options, work)
 		if err != nil {
 			return "", err
 		}
@@ -128,7 +132,7 @@ func (r *run) judge(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	err = r.stages.do(ctx, "reference faces", 0, Voxels, func() (string, error) {
+	err = r.stages.do(ctx, "reference faces", int64(v.Len()), Voxels, func() (string, error) {
 		return fmt.Sprintf("radius %g m", r.options.ReferenceRadiusM), surface.MeasureRelief(ctx)
 	})
 	if err != nil {
@@ -136,6 +140,7 @@ func (r *run) judge(ctx context.Context) error {
 	}
 	err = r.stages.do(ctx, "obstacles", 0, Voxels, func() (string, error) {
 		r.findings.Obstacles, err = hazards.FindObstacles(ctx, surface)
+		surface.Relief = nil // nobody else asks for it, and the next stage needs room
 		return count(len(r.findings.Obstacles), "obstacle", "obstacles"), err
 	})
 	if err != nil {
@@ -144,13 +149,18 @@ func (r *run) judge(ctx context.Context) error {
 	if err := r.check(ctx, surface); err != nil {
 		return err
 	}
-	return r.stages.do(ctx, "patches", 0, Voxels, func() (string, error) {
-		planes, err := surface.PlanesAt(ctx, r.Platform.FootprintRadiusM)
-		if err != nil {
-			return "", err
-		}
+	var planes *fit.LocalPlanes
+	err = r.stages.do(ctx, "footprint planes", int64(v.Len()), Voxels, func() (string, error) {
+		planes, err = surface.PlanesAt(ctx, r.Platform.FootprintRadiusM)
+		surface.Planes = nil // as for Relief
+		return fmt.Sprintf("radius %g m", r.Platform.FootprintRadiusM), err
+	})
+	if err != nil {
+		return err
+	}
+	return r.stages.do(ctx, "patches", int64(v.Len()), Voxels, func() (string, error) {
 		f := &r.findings
-		f.Patches, f.Zones, err = hazards.FindPatches(ctx, surface, planes, f.Obstacles, &r.Platform.Profile, threads)
+		f.Patches, f.Zones, err = hazards.FindPatches(ctx, surface, planes, f.Obstacles, &r.Platform.Profile, work)
 		return count(len(f.Patches), "patch", "patches") + " in " + count(len(f.Zones), "zone", "zones"), err
 	})
 }
