@@ -38,7 +38,7 @@ func runVersion(_ context.Context, g *globals, term *terminal) error {
 	if g.JSON {
 		return writeJSON(term.out, v)
 	}
-	_, err := fmt.Fprintf(term.out, "ledgework %s, %s, %s, GDAL %s\n", v, v.Go, v.Platform, v.GDAL)
+	_, err := fmt.Fprintf(term.out, "ledgework %s, %s, %s, %s\n", v, v.Go, v.Platform, v.GDAL)
 	return err
 }
 

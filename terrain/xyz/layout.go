@@ -74,13 +74,10 @@ func Looks(head []byte) bool {
 	if bytes.IndexByte(text, 0) >= 0 {
 		return false
 	}
+	end := lineEnd(text)
 	for len(text) > 0 {
-		var line []byte
-		if i := bytes.IndexAny(text, "\r\n"); i >= 0 {
-			line, text = trim(text[:i]), text[i+1:]
-		} else {
-			line, text = trim(text), nil
-		}
+		line, rest, _ := bytes.Cut(text, []byte{end})
+		line, text = trim(line), rest
 		if isComment(line) {
 			continue
 		}
@@ -95,6 +92,15 @@ func Looks(head []byte) bool {
 		return at[toX] >= 0 && at[toY] >= 0
 	}
 	return false
+}
+
+// lineEnd is the byte that ends lines: a line feed, or a carriage return where
+// there is no line feed.
+func lineEnd(head []byte) byte {
+	if bytes.IndexByte(head, '\n') < 0 && bytes.IndexByte(head, '\r') >= 0 {
+		return '\r'
+	}
+	return '\n'
 }
 
 // A sample is a line of the file's beginning.
@@ -144,9 +150,7 @@ func findLayout(head []byte, whole bool) (*layout, error) {
 		return nil, formatError(int64(bytes.Count(head[:i], []byte("\n"))+1), "the file is not text", "check the kind of file")
 	}
 	head = bytes.TrimPrefix(head, []byte("\xef\xbb\xbf"))
-	if bytes.IndexByte(head, '\n') < 0 && bytes.IndexByte(head, '\r') >= 0 {
-		l.end = '\r'
-	}
+	l.end = lineEnd(head)
 	lines, comment := sampled(head, whole, l.end)
 	if isPTX(lines) {
 		return nil, &terrain.UnsupportedError{Format: "xyz", Feature: "a PTX file of gridded scans", Remedy: "export the points as PTS, XYZ or LAS"}

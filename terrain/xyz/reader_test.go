@@ -209,7 +209,8 @@ func TestReadAllocatesNothing(t *testing.T) {
 
 func FuzzReader(f *testing.F) {
 	for _, s := range []string{"1 2 3\n4 5 6\n", "2\n1 2 3 -5\n4 5 6 7\n", "x;y;z;i\n1;2;3;\n", "# y, x, z\n2,1,3\n", ptxScan, "1,5 2,5 3,5\n",
-		"\xef\xbb\xbfe\tn\th\tr\tg\tb\n1\t2\t3\t255\t0\t0\n", "1 2 3 4 5 6 7\r\n1 2 3 4 5 6 7\r", "1\n1 2 3\n1\n1 2 3\n"} {
+		"\xef\xbb\xbfe\tn\th\tr\tg\tb\n1\t2\t3\t255\t0\t0\n", "1 2 3 4 5 6 7\r\n1 2 3 4 5 6 7\r", "1\n1 2 3\n1\n1 2 3\n",
+		"0,0\r,0\n"} { // a carriage return inside a line
 		f.Add([]byte(s))
 	}
 	f.Fuzz(func(t *testing.T, b []byte) {
