@@ -48,7 +48,7 @@ func runInspect(ctx context.Context, g *globals, opts InspectOptions, args []str
 	if err != nil {
 		return usageError{errors.New(strings.TrimPrefix(err.Error(), "survey: "))}
 	}
-	summaries := []*survey.Summary{}
+	summaries := []*summary{}
 	for _, p := range paths {
 		s, err := survey.Inspect(ctx, p, survey.Options{CRS: opts.Source.CRS, Band: opts.Source.Band, Tolerant: true})
 		if ctx.Err() != nil {
@@ -57,7 +57,17 @@ func runInspect(ctx context.Context, g *globals, opts InspectOptions, args []str
 		if err != nil {
 			return &worksite.SurveyError{Err: err}
 		}
-		summaries = append(summaries, s)
+		both := &summary{Summary: s}
+		if s.Cell > 0 && s.Unusable == "" {
+			both.Slopes, err = slopesOf(ctx, p, opts.Source.Band, s.CRS.WKT)
+			if ctx.Err() != nil {
+				return ctx.Err()
+			}
+			if err != nil {
+				return &worksite.SurveyError{Err: err}
+			}
+		}
+		summaries = append(summaries, both)
 	}
 	switch {
 	case g.JSON:
@@ -76,8 +86,14 @@ func runInspect(ctx context.Context, g *globals, opts InspectOptions, args []str
 	return nil
 }
 
+// A summary is what inspect says of one file.
+type summary struct {
+	*survey.Summary
+	Slopes *Slopes `json:"slopes,omitempty"` // of an elevation grid
+}
+
 // printSummaries writes one block for each file.
-func printSummaries(w io.Writer, summaries []*survey.Summary) error {
+func printSummaries(w io.Writer, summaries []*summary) error {
 	t := tabwriter.NewWriter(w, 0, 0, 2, ' ', 0)
 	for i, s := range summaries {
 		if i > 0 {
@@ -88,7 +104,7 @@ func printSummaries(w io.Writer, summaries []*survey.Summary) error {
 	return t.Flush()
 }
 
-func printSummary(w io.Writer, s *survey.Summary) {
+func printSummary(w io.Writer, s *summary) {
 	row := func(name, format string, args ...any) {
 		fmt.Fprintf(w, "%s\t%s\n", name, fmt.Sprintf(format, args...))
 	}
@@ -110,11 +126,16 @@ func printSummary(w io.Writer, s *survey.Summary) {
 			row("  "+axis, "%.9g to %.9g", s.Min[i], s.Max[i])
 		}
 	}
-	printPlace(row, s)
+	printPlace(row, s.Summary)
 	if s.Cell > 0 {
 		row("  grid", "cells of %g (%.4g m), %.1f %% without data", s.Cell, s.CellM, 100*s.NodataShare)
 	} else if s.Density > 0 {
 		row("  density", "%.3g points/m² where there are any, typically %.3g m apart", s.Density, s.Spacing)
+	}
+	if l := s.Slopes; l != nil {
+		row("  slope", "%.1f° in the median, 10 %% below %.1f°, 10 %% above %.1f°, at most %.1f° (%s)", l.MedianDeg, l.P10Deg, l.P90Deg, l.MaxDeg, l.Method)
+		row("  steep", "%.1f %% above 45°, %.1f %% above 60°", 100*l.Above45, 100*l.Above60)
+		row("  ruggedness", "%.3g m in the median (%s)", l.RuggednessM, l.RuggednessBy)
 	}
 	for _, c := range s.Classes {
 		row("  class", "%d %s: %d", c.Class, c.Name, c.Count)
