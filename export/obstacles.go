@@ -100,6 +100,7 @@ func obstacleColumns() []column[obstacleRow] {
 		number("area_m2", "m²", metreDigits, "> 0", "surface area", func(r *row) float64 { return r.AreaM2 }),
 		number("rock_volume_m3", "m³", cubicDigits, "≥ 0", "volume between surface and reference face; of a recess, the missing rock", func(r *row) float64 { return r.RockVolumeM3 }),
 		number("ellipsoid_volume_m3", "m³", cubicDigits, "> 0", "volume of the whole ellipsoid, on both sides of the reference face", func(r *row) float64 { return r.Ellipsoid.Volume() }),
+		number("ellipsoid_area_m2", "m²", metreDigits, "> 0", "surface area of the whole ellipsoid", func(r *row) float64 { return r.Ellipsoid.SurfaceArea() }),
 		number("rock_share", "", ratioDigits, "0 to 1", "rock volume over the part of the ellipsoid on the same side of the reference face", func(r *row) float64 { return r.RockShare }),
 		number("volume_gap", "", FullPrecision, "≥ 0", "relative bound on how much larger the ellipsoid is than the smallest one that contains every point", func(r *row) float64 { return r.VolumeGap }),
 		number("inclination_deg", "°", degreeDigits, "0 to 180", "95th percentile of the inclination of its local planes: 0 flat, 90 vertical, more overhanging", func(r *row) float64 { return r.InclinationDeg }),

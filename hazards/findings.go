@@ -90,9 +90,12 @@ type Zone struct {
 	Voxels          []int32 // ascending
 	AreaM2          float64 // surface area
 	PatchCount      int
-	BestPatch       string // id, empty if none lies in it
-	BestScore       float64
+	BestPatch       string  // id, empty if none lies in it
+	BestScore       float64 // of its best patch, or of its best voxel where no patch lies in it
 	MeanScore       float64
 	InclinationDeg  float64 // of its mean normal
 	DipDirectionDeg float64
+	// SpreadDeg is the angular dispersion of its local normals, arccos(R/N) for
+	// N unit normals of resultant length R: 0 on a plane.
+	SpreadDeg float64
 }

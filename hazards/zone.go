@@ -2,10 +2,9 @@ package hazards
 
 import (
 	"context"
+	"math"
 	"slices"
 	"strings"
-
-	"gonum.org/v1/gonum/spatial/r3"
 
 	"ledgework/fit"
 	"ledgework/terrain"
@@ -33,7 +32,7 @@ func (j *judge) zones(ctx context.Context, scores []float64, patches []Patch) ([
 
 	zoneOf := make(map[int32]int) // by the zone's first voxel
 	var zones []Zone
-	var normals []r3.Vec
+	var normals []fit.Directions
 	for i, v := range usable {
 		if i%chunkVoxels == 0 && ctx.Err() != nil {
 			return nil, ctx.Err()
@@ -43,22 +42,24 @@ func (j *judge) zones(ctx context.Context, scores []float64, patches []Patch) ([
 			at = len(zones)
 			zoneOf[labels[i]] = at
 			zones = append(zones, Zone{})
-			normals = append(normals, r3.Vec{})
+			normals = append(normals, fit.Directions{})
 		}
 		z := &zones[at]
 		z.Voxels = append(z.Voxels, v)
 		z.AreaM2 += columnArea(j.index, j.planes.Normal[v], int(v), func(i int) bool { return scores[i] > 0 })
 		z.MeanScore += scores[v]
 		z.BestScore = max(z.BestScore, scores[v])
-		normals[at] = r3.Add(normals[at], j.planes.Normal[v])
+		normals[at].Add(j.planes.Normal[v], 1)
 	}
 
 	firsts := make([]terrain.Cell, len(zones))
 	for at := range zones {
 		z := &zones[at]
 		z.MeanScore /= float64(len(z.Voxels))
-		z.InclinationDeg = fit.InclinationDeg(normals[at])
-		z.DipDirectionDeg, _ = fit.DipDirectionDeg(normals[at])
+		mean, resultant, _ := normals[at].Mean()
+		z.InclinationDeg = fit.InclinationDeg(mean)
+		z.DipDirectionDeg, _ = fit.DipDirectionDeg(mean)
+		z.SpreadDeg = math.Acos(min(1, resultant/float64(len(z.Voxels)))) * 180 / math.Pi
 		firsts[at] = j.voxels.Cells[z.Voxels[0]]
 	}
 	for at, id := range IDs(zonePrefix, j.voxels.Lattice, firsts) {

@@ -111,6 +111,7 @@ func TestZoneAreaOfPlanes(t *testing.T) {
 			const extra = 0.05 * 8 * half / 2
 			near(t, "area", zones[0].AreaM2, 4*half*half+1.3*extra, 0.5*extra)
 			near(t, "inclination", zones[0].InclinationDeg, math.Acos(n.Z)*180/math.Pi, 0.3)
+			near(t, "spread", zones[0].SpreadDeg, 0, 3)
 		}
 	}
 	for _, lean := range []float64{0, 20, 45} {
@@ -176,3 +177,20 @@ func TestConnectedAgainstBruteForce(t *testing.T) {
 }
 
 func abs(v int32) int32 { return max(v, -v) }
+
+// Normals spread evenly over an arc of ±α have the resultant sin α/α.
+func TestZoneSpreadOfArc(t *testing.T) {
+	rng := rand.New(rand.NewPCG(1, 2))
+	const radius, half = 4.0, math.Pi / 6
+	var points []r3.Vec
+	for range 40000 {
+		sin, cos := math.Sincos(half * (2*rng.Float64() - 1))
+		points = append(points, r3.Vec{X: 5 * rng.Float64(), Y: radius * sin, Z: radius * cos})
+	}
+	g := newGround(t, 0.1, 0.4, r3.Vec{Z: 1}, points)
+	_, zones, err := FindPatches(context.Background(), g.surface, g.planes, nil, lenient(0.4), fit.Work{Workers: 2})
+	if err != nil || len(zones) != 1 {
+		t.Fatalf("%d zones, %v", len(zones), err)
+	}
+	near(t, "spread", zones[0].SpreadDeg, math.Acos(math.Sin(half)/half)*180/math.Pi, 0.5)
+}
