@@ -85,24 +85,18 @@ const coarseRadii = 3
 // buildLevels makes the pyramid up to the centre level.
 func (s *Surface) buildLevels() error {
 	r := s.options.ReferenceRadiusM
-	s.levels = []*terrain.Voxels{s.Voxels}
-	for {
-		top := s.levels[len(s.levels)-1]
-		g := top.Lattice.SpacingM()
-		if g*membersPerRadius <= r {
-			s.memberLevel = len(s.levels) - 1
-		}
-		if 2*g*centresPerRadius > r {
-			s.centreLevel = len(s.levels) - 1
-			s.centreParents = s.ancestors(0, s.centreLevel)
-			return nil
-		}
-		c, parent, err := top.Coarser()
-		if err != nil {
-			return err
-		}
-		s.levels, s.parents = append(s.levels, c), append(s.parents, parent)
+	var err error
+	if s.levels, s.parents, err = s.Voxels.Pyramid(r / centresPerRadius); err != nil {
+		return err
 	}
+	for n, v := range s.levels {
+		if v.Lattice.SpacingM() <= r/membersPerRadius {
+			s.memberLevel = n
+		}
+	}
+	s.centreLevel = len(s.levels) - 1
+	s.centreParents = s.ancestors(0, s.centreLevel)
+	return nil
 }
 
 // ancestors gives each voxel of level from its voxel at level to.
@@ -171,7 +165,3 @@ func (s *Surface) PlanesAt(ctx context.Context, radiusM float64) (*fit.LocalPlan
 	}
 	return p, fit.OrientFrom(ctx, s.Index, p, s.Planes, s.ancestors(0, 0), s.sensors)
 }
-
-// Outline returns the voxels of the centre level, coarse enough for an outline
-// of the survey.
-func (s *Surface) Outline() *terrain.Voxels { return s.levels[s.centreLevel] }

@@ -112,9 +112,6 @@ func TestSurfaceLevels(t *testing.T) {
 			}
 		}
 	}
-	if s.Outline() != s.levels[s.centreLevel] {
-		t.Error("outline is not the level of the centres")
-	}
 	if !slices.Equal(s.centreParents, s.ancestors(0, s.centreLevel)) {
 		t.Error("centre parents are no ancestors")
 	}

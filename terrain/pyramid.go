@@ -74,12 +74,12 @@ func (v *Voxels) cellRange() (lo, hi Cell) {
 	return lo, hi
 }
 
-// Pyramid returns v and its coarser levels until the spacing reaches at least
-// atLeastM, with the parent of each voxel one level up. Level 0 is v; parents
-// has one entry less than levels.
-func (v *Voxels) Pyramid(atLeastM float64) (levels []*Voxels, parents [][]int32, err error) {
+// Pyramid returns v and its coarser levels up to a spacing of at most atMostM,
+// with the parent of each voxel one level up. Level 0 is v, whatever its spacing;
+// parents has one entry less than levels.
+func (v *Voxels) Pyramid(atMostM float64) (levels []*Voxels, parents [][]int32, err error) {
 	levels = []*Voxels{v}
-	for levels[len(levels)-1].Lattice.SpacingM() < atLeastM {
+	for 2*levels[len(levels)-1].Lattice.SpacingM() <= atMostM {
 		c, p, err := levels[len(levels)-1].Coarser()
 		if err != nil {
 			return nil, nil, err

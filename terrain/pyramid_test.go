@@ -13,7 +13,7 @@ func TestCoarserIsExact(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	levels, parents, err := v.Pyramid(3)
+	levels, parents, err := v.Pyramid(3.2)
 	if err != nil {
 		t.Fatal(err)
 	}
