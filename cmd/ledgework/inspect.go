@@ -31,7 +31,8 @@ func newInspectCommand(g *globals, term *terminal) *cobra.Command {
 		Use:   "inspect FILE…",
 		Short: "Say what is in survey files",
 		Long: `Inspect reads survey files from end to end and says what is in them: points, extent,
-CRS, density, classes, returns, and what was wrong. Damage is passed over and counted.`,
+CRS, density, classes, returns, of an elevation grid how steep it is, and what was wrong.
+Damage is passed over and counted.`,
 		Example: `  ledgework inspect scan/*.las
   ledgework inspect --json dem.tif`,
 		Args: someArguments("FILE"),
