@@ -6,6 +6,8 @@ import (
 	"testing"
 
 	"gonum.org/v1/gonum/spatial/r3"
+
+	"ledgework/terrain"
 )
 
 // lineAlong is the unit vector of a line of the given trend and plunge.
@@ -23,7 +25,7 @@ func TestDirectionsFisher1953(t *testing.T) {
 	inclination := []float64{66.1, 68.7, 70.1, 82.1, 79.5, 73, 69.3, 58.8, 51.4}
 	var d Directions
 	for i := range declination {
-		d.Add(lineAlong(declination[i], inclination[i]), 1)
+		d.Add(lineAlong(declination[i], inclination[i]))
 	}
 	mean, r, ok := d.Mean()
 	if !ok {
@@ -38,21 +40,24 @@ func TestDirectionsFisher1953(t *testing.T) {
 	near(t, "inclination", plunge, 70.8911557385, 1e-8)
 	k, _ := d.Concentration()
 	near(t, "k", k, 35.0848715627, 1e-8)
-	kappa, _ := d.LikelyConcentration()
-	near(t, "likely kappa", kappa, 39.4704805080, 1e-8)
-	a95, _ := d.ConfidenceDeg(0.05)
-	near(t, "alpha95", a95, 8.8131873116, 1e-8)
-	a99, _ := d.ConfidenceDeg(0.01)
-	near(t, "alpha99", a99, 11.5445363246, 1e-8)
+	// The published estimate of κ by maximum likelihood solves coth κ − 1/κ = R/N.
+	near(t, "R/N of likely kappa", r/9, langevin(39.4704805080), 1e-11)
+	near(t, "alpha95", confidenceDeg(9, r, 0.05), 8.8131873116, 1e-8)
+	near(t, "alpha99", confidenceDeg(9, r, 0.01), 11.5445363246, 1e-8)
+	near(t, "dispersion", math.Cos(radians(d.DispersionDeg())), 0.974664610435, 1e-12)
 }
 
 // Fifty pole positions, data set polar of R package boot (Fisher, Lewis &
 // Embleton 1987); R and NumPy agree on the values.
 func TestDirectionsPolar(t *testing.T) {
 	var d Directions
+	var outer terrain.Covariance
 	for _, row := range readColumns(t, dataFile(t, "reference/polar.txt")) {
 		lat, long := radians(row[0]), radians(row[1])
-		d.Add(r3.Vec{X: math.Cos(lat) * math.Cos(long), Y: math.Cos(lat) * math.Sin(long), Z: math.Sin(lat)}, 1)
+		v := r3.Vec{X: math.Cos(lat) * math.Cos(long), Y: math.Cos(lat) * math.Sin(long), Z: math.Sin(lat)}
+		d.Add(v)
+		outer.XX, outer.XY, outer.XZ = outer.XX+v.X*v.X/50, outer.XY+v.X*v.Y/50, outer.XZ+v.X*v.Z/50
+		outer.YY, outer.YZ, outer.ZZ = outer.YY+v.Y*v.Y/50, outer.YZ+v.Y*v.Z/50, outer.ZZ+v.Z*v.Z/50
 	}
 	mean, r, _ := d.Mean()
 	near(t, "R", r, 38.4391702874, 1e-8)
@@ -60,11 +65,9 @@ func TestDirectionsPolar(t *testing.T) {
 	near(t, "longitude", degrees(math.Atan2(mean.Y, mean.X)), 87.2153899697, 1e-8)
 	k, _ := d.Concentration()
 	near(t, "k", k, 4.2384501129, 1e-8)
-	kappa, _ := d.LikelyConcentration()
-	near(t, "likely kappa", kappa, 4.3183183999, 1e-8)
-	a95, _ := d.ConfidenceDeg(0.05)
-	near(t, "alpha95", a95, 11.1752935737, 1e-8)
-	lambda, _ := d.Tensor()
+	near(t, "R/N of likely kappa", r/50, langevin(4.3183183999), 1e-10)
+	near(t, "alpha95", confidenceDeg(50, r, 0.05), 11.1752935737, 1e-8)
+	lambda, _ := EigenSym3(outer)
 	for i, want := range [3]float64{0.1160097660, 0.2087879158, 0.6752023182} {
 		near(t, "tensor", lambda[i], want, 1e-9)
 	}
@@ -75,80 +78,86 @@ func TestDirectionsPolar(t *testing.T) {
 func TestDirectionsConcentrated(t *testing.T) {
 	var d Directions
 	for _, v := range [][2]float64{{180, 30}, {179, 29}, {182, 31}} {
-		d.Add(lineAlong(v[0], v[1]), 1)
+		d.Add(lineAlong(v[0], v[1]))
 	}
 	mean, r, _ := d.Mean()
 	near(t, "R", r, 2.9991636224, 1e-10)
 	k, _ := d.Concentration()
 	near(t, "k", k, 2391.2644984, 1e-6)
-	a95, _ := d.ConfidenceDeg(0.05)
-	near(t, "alpha95", a95, 2.5215765, 1e-7)
+	near(t, "alpha95", confidenceDeg(3, r, 0.05), 2.5215765, 1e-7)
 	trend, plunge := TrendPlunge(mean)
 	near(t, "declination", trend, 180.3232004, 1e-7)
 	near(t, "inclination", plunge, 30.0058654, 1e-7)
 }
 
+// langevin is the mean resultant length of Fisher's distribution.
+func langevin(kappa float64) float64 { return 1/math.Tanh(kappa) - 1/kappa }
+
+// confidenceDeg is Fisher's half angle of the cone that holds the true mean with
+// probability 1−p: what n and R are published for.
+func confidenceDeg(n, r, p float64) float64 {
+	versine := (n - r) / r * math.Expm1(-math.Log(p)/(n-1))
+	return degrees(2 * math.Asin(math.Sqrt(versine/2)))
+}
+
 func TestDirectionsDegenerate(t *testing.T) {
 	var d Directions
-	if _, _, ok := d.Mean(); ok {
-		t.Error("an empty sample has a mean")
+	if _, _, ok := d.Mean(); ok || d.DispersionDeg() != 0 {
+		t.Error("an empty sample has a mean or a dispersion")
 	}
-	if lambda, _ := d.Tensor(); lambda != [3]float64{} {
-		t.Errorf("tensor of an empty sample %v", lambda)
+	if _, ok := d.CircularDeviationDeg(); ok {
+		t.Error("an empty sample has a circular deviation")
 	}
-	d.Add(r3.Vec{X: 1}, 1)
+	d.Add(r3.Vec{X: 1})
 	if _, ok := d.Concentration(); ok {
 		t.Error("one direction has a concentration")
 	}
-	d.Add(r3.Vec{X: 1}, 1)
-	if _, ok := d.Concentration(); ok {
-		t.Error("two equal directions have a concentration")
+	d.Add(r3.Vec{X: 1})
+	if _, ok := d.Concentration(); ok || d.DispersionDeg() != 0 {
+		t.Error("two equal directions have a concentration or a dispersion")
 	}
-	d.Add(r3.Vec{X: -1}, 2)
+	d.Add(r3.Vec{X: -1})
+	d.Add(r3.Vec{X: -1})
 	if _, _, ok := d.Mean(); ok {
 		t.Error("directions that cancel have a mean")
 	}
-	if kappa, ok := d.LikelyConcentration(); !ok || kappa != 0 {
-		t.Errorf("directions that cancel: kappa %v, %v", kappa, ok)
+	if _, ok := d.CircularDeviationDeg(); ok {
+		t.Error("directions that cancel have a circular deviation")
 	}
-	if _, ok := d.ConfidenceDeg(0.05); ok {
-		t.Error("directions that cancel have a confidence cone")
+	near(t, "dispersion of directions that cancel", d.DispersionDeg(), 90, 0)
+}
+
+// Two directions lie half their angle off their mean.
+func TestDirectionsDispersion(t *testing.T) {
+	for _, angle := range []float64{0.01, 1, 30, 89} {
+		var d Directions
+		d.Add(lineAlong(10, angle))
+		d.Add(lineAlong(10, -angle))
+		near(t, "dispersion", d.DispersionDeg(), angle, 1e-9)
 	}
 }
 
-func TestInverseLangevin(t *testing.T) {
-	for _, kappa := range []float64{1e-8, 1e-4, 2e-3, 0.1, 1, 3, 39.47048, 500, 1e5} {
-		// coth κ − 1/κ, by its series where the difference cancels.
-		r := 1/math.Tanh(kappa) - 1/kappa
-		if kappa < 0.01 {
-			r = kappa/3 - kappa*kappa*kappa/45
-		}
-		near(t, "kappa", inverseLangevin(r)/kappa, 1, 1e-6)
-		if kappa >= 0.1 && kappa < 1000 {
-			near(t, "kappa", inverseLangevin(r)/kappa, 1, 1e-10)
-		}
+// Azimuths of paleocurrents, data set islay of R package boot; of lines without
+// a sense, the doubled angles are averaged (Krumbein 1939).
+func TestDirectionsOfAzimuths(t *testing.T) {
+	var sense, axial Directions
+	for _, a := range []float64{12, 353, 359, 332, 341, 299, 30, 24, 53, 284, 99, 72, 28, 93, 125, 318, 3, 45} {
+		sense.Add(lineAlong(a, 0))
+		axial.Add(lineAlong(2*a, 0))
 	}
-}
-
-// Azimuths of paleocurrents, data set islay of R package boot.
-func TestCircularMeanIslay(t *testing.T) {
-	az := []float64{12, 353, 359, 332, 341, 299, 30, 24, 53, 284, 99, 72, 28, 93, 125, 318, 3, 45}
-	mean, r, ok := CircularMean(az)
+	mean, r, ok := sense.Mean()
 	if !ok {
 		t.Fatal("no mean")
 	}
-	near(t, "mean", mean, 17.7703391300, 1e-8)
-	near(t, "resultant", r, 0.6280563433, 1e-9)
-	near(t, "deviation", CircularDeviationDeg(r), 55.2614985, 1e-6)
-	axial, r2, _ := AxialMean(az)
-	near(t, "axial mean", axial, 1.4071264004, 1e-8)
-	near(t, "axial resultant", r2, 0.1264130028, 1e-9)
-	if _, _, ok := CircularMean([]float64{0, 180}); ok {
-		t.Error("opposite azimuths have a mean")
-	}
-	if _, _, ok := CircularMean(nil); ok {
-		t.Error("no azimuths have a mean")
-	}
+	azimuth, _ := TrendPlunge(mean)
+	near(t, "mean", azimuth, 17.7703391300, 1e-8)
+	near(t, "resultant", r/18, 0.6280563433, 1e-9)
+	deviation, _ := sense.CircularDeviationDeg()
+	near(t, "deviation", deviation, 55.2614985, 1e-6)
+	mean, r, _ = axial.Mean()
+	azimuth, _ = TrendPlunge(mean)
+	near(t, "axial mean", azimuth/2, 1.4071264004, 1e-8)
+	near(t, "axial resultant", r/18, 0.1264130028, 1e-9)
 }
 
 // The plane 130/50 has the pole 310/40: Brady & Brown, Rock Mechanics for

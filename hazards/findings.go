@@ -95,7 +95,11 @@ type Zone struct {
 	MeanScore       float64
 	InclinationDeg  float64 // of its mean normal
 	DipDirectionDeg float64
-	// SpreadDeg is the angular dispersion of its local normals, arccos(R/N) for
-	// N unit normals of resultant length R: 0 on a plane.
-	SpreadDeg float64
+
+	// How its N local unit normals of resultant length R vary. They are those of
+	// overlapping footprints, so no error of the mean follows from them.
+	SpreadDeg             float64 // angular dispersion, arccos(R/N): 0 on a plane
+	Concentration         float64 // Fisher's k = (N−1)/(N−R); NaN for one normal, or where all are the same
+	DipDirectionMeanDeg   float64 // circular mean, each voxel counting alike however steep; NaN on level ground
+	DipDirectionSpreadDeg float64 // circular standard deviation about it; NaN likewise
 }

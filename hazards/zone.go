@@ -6,6 +6,8 @@ import (
 	"slices"
 	"strings"
 
+	"gonum.org/v1/gonum/spatial/r3"
+
 	"ledgework/fit"
 	"ledgework/terrain"
 )
@@ -32,7 +34,7 @@ func (j *judge) zones(ctx context.Context, scores []float64, patches []Patch) ([
 
 	zoneOf := make(map[int32]int) // by the zone's first voxel
 	var zones []Zone
-	var normals []fit.Directions
+	var normals, horizontals []fit.Directions
 	for i, v := range usable {
 		if i%chunkVoxels == 0 && ctx.Err() != nil {
 			return nil, ctx.Err()
@@ -43,23 +45,34 @@ func (j *judge) zones(ctx context.Context, scores []float64, patches []Patch) ([
 			zoneOf[labels[i]] = at
 			zones = append(zones, Zone{})
 			normals = append(normals, fit.Directions{})
+			horizontals = append(horizontals, fit.Directions{})
 		}
 		z := &zones[at]
 		z.Voxels = append(z.Voxels, v)
 		z.AreaM2 += columnArea(j.index, j.planes.Normal[v], int(v), func(i int) bool { return scores[i] > 0 })
 		z.MeanScore += scores[v]
 		z.BestScore = max(z.BestScore, scores[v])
-		normals[at].Add(j.planes.Normal[v], 1)
+		n := j.planes.Normal[v]
+		normals[at].Add(n)
+		if _, ok := fit.DipDirectionDeg(n); ok {
+			horizontals[at].Add(r3.Unit(r3.Vec{X: n.X, Y: n.Y}))
+		}
 	}
 
 	firsts := make([]terrain.Cell, len(zones))
 	for at := range zones {
 		z := &zones[at]
 		z.MeanScore /= float64(len(z.Voxels))
-		mean, resultant, _ := normals[at].Mean()
+		mean, _, _ := normals[at].Mean()
 		z.InclinationDeg = fit.InclinationDeg(mean)
 		z.DipDirectionDeg, _ = fit.DipDirectionDeg(mean)
-		z.SpreadDeg = math.Acos(min(1, resultant/float64(len(z.Voxels)))) * 180 / math.Pi
+		z.SpreadDeg = normals[at].DispersionDeg()
+		z.Concentration = orNaN(normals[at].Concentration())
+		z.DipDirectionMeanDeg, z.DipDirectionSpreadDeg = math.NaN(), math.NaN()
+		if m, _, ok := horizontals[at].Mean(); ok {
+			z.DipDirectionMeanDeg = orNaN(fit.DipDirectionDeg(m))
+			z.DipDirectionSpreadDeg = orNaN(horizontals[at].CircularDeviationDeg())
+		}
 		firsts[at] = j.voxels.Cells[z.Voxels[0]]
 	}
 	for at, id := range IDs(zonePrefix, j.voxels.Lattice, firsts) {
@@ -82,6 +95,13 @@ func (j *judge) zones(ctx context.Context, scores []float64, patches []Patch) ([
 	}
 	slices.SortFunc(zones, func(a, b Zone) int { return strings.Compare(a.ID, b.ID) })
 	return zones, nil
+}
+
+func orNaN(v float64, ok bool) float64 {
+	if !ok {
+		return math.NaN()
+	}
+	return v
 }
 
 // connected labels the listed cells, which like list are in the order of

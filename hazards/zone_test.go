@@ -193,4 +193,18 @@ func TestZoneSpreadOfArc(t *testing.T) {
 		t.Fatalf("%d zones, %v", len(zones), err)
 	}
 	near(t, "spread", zones[0].SpreadDeg, math.Acos(math.Sin(half)/half)*180/math.Pi, 0.5)
+
+	// The same arc about an upright axis: its azimuths have that resultant too.
+	for i, p := range points {
+		points[i] = r3.Vec{X: p.Y, Y: p.Z, Z: p.X}
+	}
+	g = newGround(t, 0.1, 0.4, r3.Vec{Y: 1}, points)
+	_, zones, err = FindPatches(context.Background(), g.surface, g.planes, nil, lenient(0.4), fit.Work{Workers: 2})
+	if err != nil || len(zones) != 1 {
+		t.Fatalf("%d zones, %v", len(zones), err)
+	}
+	z, r := &zones[0], math.Sin(half)/half
+	near(t, "concentration", z.Concentration, 1/(1-r), 0.05/(1-r))
+	near(t, "mean dip direction off north", math.Remainder(z.DipDirectionMeanDeg, 360), 0, 0.5)
+	near(t, "spread of dip directions", z.DipDirectionSpreadDeg, math.Sqrt(-2*math.Log(r))*180/math.Pi, 0.5)
 }
