@@ -44,19 +44,6 @@ func Vertical95(rmseH float64) float64 {
 	return twoSided95 * rmseH
 }
 
-// Horizontal95 is the horizontal accuracy at 95 % confidence by the same
-// standards, 1.7308·RMSEr = 2.4477·RMSE of one axis. It supposes normal errors
-// without bias and alike on both axes. It is not ok where the smaller RMSE is
-// less than 0.6 of the larger: NSSDA gives the factor no validity there.
-func Horizontal95(rmseE, rmseN float64) (m float64, ok bool) {
-	const (
-		circular95 = 1.7308183826022854 // √(χ²₂(0.95)/2)
-		minRatio   = 0.6                // NSSDA appendix 3-A
-	)
-	m = circular95 * math.Hypot(rmseE, rmseN)
-	return m, min(rmseE, rmseN) >= minRatio*max(rmseE, rmseN)
-}
-
 // CombineRMSE adds independent errors: of two axes to one of the plane or of
 // space, or of the survey against the checkpoints with that of the checkpoints
 // themselves, which the ASPRS Positional Accuracy Standards Edition 2 (2023)

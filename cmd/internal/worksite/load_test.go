@@ -24,6 +24,7 @@ surveys:
     band: 2
     tolerate_defects: true
     checkpoints: [[7, 8, 9]]
+    checkpoint_sigma_m: 0.02
 exclude_classes: [7]
 platform: { profile: ledge, roughness_m: { allowed: 0.05 } }
 obstacles: { bulge_height_m: 0.5, reference_radius_m: 4, surface_radius_m: auto }
@@ -49,6 +50,7 @@ outputs: [geojson]
 		{"band", s.Band, 2},
 		{"tolerate", s.TolerateDefects, true},
 		{"checkpoint", s.Checkpoints[0], Point{7, 8, 9}},
+		{"checkpoint sigma", s.CheckpointSigmaM, 0.02},
 		{"classes", len(w.Exclude), 1},
 		{"profile", w.Platform.Name, "ledge"},
 		{"limit given", w.Platform.RoughnessM.Allowed, 0.05},
@@ -110,6 +112,7 @@ func TestParseErrors(t *testing.T) {
 		{"sensor in the plane", "surveys: [{files: [a], sensors: [[1, 2]]}]\n", `w.yaml:1:34: "[1, 2]" is not a list of 3 numbers; write [E, N, H] …`},
 		{"not a date", "surveys: [{files: [a], date: 14.5.2026}]\n", `w.yaml:1:30: "14.5.2026" is not a date; write it as 2026-05-14`},
 		{"negative accuracy", "surveys: [{files: [a], accuracy_m: -1}]\n", "w.yaml:1:36: -1 m is no accuracy; …"},
+		{"checkpoints of no accuracy", "surveys: [{files: [a], checkpoint_sigma_m: .nan}]\n", "w.yaml:1:44: NaN m is no accuracy; …"},
 		{"negative band", "surveys: [{files: [a], band: -1}]\n", "w.yaml:1:30: there is no band -1; bands count from 1"},
 		{"unknown output", surveys + "outputs: [geojson, gpkg]\n", `w.yaml:2:20: output "gpkg" is not written yet; only geojson is`},
 		{"unknown profile", surveys + "platform: {profile: lege}\n", `w.yaml:2:11: "lege" is no example profile and footprint_radius_m, inclination_deg, roughness_m, step_m, clearance_m, coverage not given; name suspended, ledge or pad, or give every limit`},

@@ -94,9 +94,10 @@ surveys:
     files: {{list .Files}}   # relative to this file; folders and globs too
     {{if .CRS}}crs: {{quote .CRS}}{{else}}# crs: EPSG:n{{end}}   # only when the files carry none
     {{if .Sensors}}sensors: {{list .Sensors}}{{else}}# sensors: [[E, N, H]]{{end}}   # scanner positions in the working CRS, when known
-    {{if .AccuracyM}}accuracy_m: {{number .AccuracyM}}{{else}}# accuracy_m: 0.01{{end}}   # 1 sigma of a point, when known
+    {{if .AccuracyM}}accuracy_m: {{number .AccuracyM}}{{else}}# accuracy_m: 0.01{{end}}   # 1 sigma of a point, when known: checkpoints are held against it
     {{if .Band}}band: {{.Band}}{{else}}# band: 1{{end}}   # elevation band of a grid; found by itself where it can be
     {{if .Checkpoints}}checkpoints: {{list .Checkpoints}}{{else}}# checkpoints: [[E, N, H]]{{end}}   # surveyed positions that the heights are compared with
+    {{if .CheckpointSigmaM}}checkpoint_sigma_m: {{number .CheckpointSigmaM}}{{else}}# checkpoint_sigma_m: 0.01{{end}}   # 1 sigma of their heights, when known
     tolerate_defects: {{.TolerateDefects}}   # true passes over damaged points and a cut-off end, and counts them
 {{- end}}
 exclude_classes: {{list .Exclude}}   # LAS classes left out; 7 and 18 are noise

@@ -17,7 +17,7 @@ func TestText(t *testing.T) {
 	full.Crop = BoxAround(500000.12, 6200000.9, 500100.5, 6200050)
 	full.Surveys = []Survey{
 		{Date: "2026-05-14", Files: []string{"scan one/*.las", `b\c.las`, "é: #.las"}, CRS: "EPSG:4326", AccuracyM: 0.01,
-			Band: 3, TolerateDefects: true, Sensors: []Point{{1, 2, 3}, {4.125, 5, -6}}, Checkpoints: []Point{{7, 8, 9}}},
+			Band: 3, TolerateDefects: true, Sensors: []Point{{1, 2, 3}, {4.125, 5, -6}}, Checkpoints: []Point{{7, 8, 9}}, CheckpointSigmaM: 0.02},
 		{Files: []string{"late"}},
 	}
 	cropped := Default()

@@ -62,6 +62,9 @@ func (w *Worksite) validateSurvey(i int) error {
 	if !(s.AccuracyM >= 0 && s.AccuracyM <= roughest) {
 		return w.at(at+".accuracy_m", fmt.Sprintf("%g m is no accuracy", s.AccuracyM), "write one standard deviation of a point, in metres")
 	}
+	if !(s.CheckpointSigmaM >= 0 && s.CheckpointSigmaM <= roughest) {
+		return w.at(at+".checkpoint_sigma_m", fmt.Sprintf("%g m is no accuracy", s.CheckpointSigmaM), "write one standard deviation of a checkpoint's height, in metres")
+	}
 	if s.Band < 0 {
 		return w.at(at+".band", fmt.Sprintf("there is no band %d", s.Band), "bands count from 1")
 	}

@@ -28,14 +28,19 @@ type Worksite struct {
 
 // A Survey is one set of files that belong together.
 type Survey struct {
-	Date            string   `yaml:"date" json:"date,omitempty"` // YYYY-MM-DD
-	Files           []string `yaml:"files" json:"files"`         // paths, folders and globs, relative to the worksite
-	CRS             string   `yaml:"crs" json:"crs,omitempty"`   // of files that carry none
-	Band            int      `yaml:"band" json:"band,omitempty"` // elevation band of grids, from 1; 0 is automatic
-	Sensors         []Point  `yaml:"sensors" json:"sensors,omitempty"`
-	AccuracyM       float64  `yaml:"accuracy_m" json:"accuracy_m,omitempty"` // 1 sigma of a point, 0 where unknown
-	TolerateDefects bool     `yaml:"tolerate_defects" json:"tolerate_defects,omitempty"`
-	Checkpoints     []Point  `yaml:"checkpoints" json:"checkpoints,omitempty"`
+	Date    string   `yaml:"date" json:"date,omitempty"` // YYYY-MM-DD
+	Files   []string `yaml:"files" json:"files"`         // paths, folders and globs, relative to the worksite
+	CRS     string   `yaml:"crs" json:"crs,omitempty"`   // of files that carry none
+	Band    int      `yaml:"band" json:"band,omitempty"` // elevation band of grids, from 1; 0 is automatic
+	Sensors []Point  `yaml:"sensors" json:"sensors,omitempty"`
+	// AccuracyM is 1 sigma of a point, 0 where unknown. It is what the
+	// checkpoints are held against and stands in the voxel file. Judgements do
+	// without it: what points err by themselves shows in the roughness measured,
+	// and an error common to all changes no measure of one patch.
+	AccuracyM        float64 `yaml:"accuracy_m" json:"accuracy_m,omitempty"`
+	TolerateDefects  bool    `yaml:"tolerate_defects" json:"tolerate_defects,omitempty"`
+	Checkpoints      []Point `yaml:"checkpoints" json:"checkpoints,omitempty"`
+	CheckpointSigmaM float64 `yaml:"checkpoint_sigma_m" json:"checkpoint_sigma_m,omitempty"` // 1 sigma of a checkpoint's height, 0 where unknown
 }
 
 // Classes are LAS classification codes.
