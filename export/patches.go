@@ -40,7 +40,7 @@ func patchColumns() []column[patchRow] {
 			return r.ClearanceSigmaM
 		})),
 		number("score", "", ratioDigits, "0 to 1", "desirability by the profile: 1 all measures at their best, 0 one beyond its allowed limit", func(r *row) float64 { return r.Score }),
-		number("confidence", "", ratioDigits, "0 to 1", "probability, from the uncertainties, that all allowed limits hold", func(r *row) float64 { return r.Confidence }),
+		number("confidence", "", ratioDigits, "0 to 1", "probability, from the uncertainties, that all allowed limits hold; an error common to the whole survey is not in it", func(r *row) float64 { return r.Confidence }),
 		null("none does", text("limited_by", "inclination, roughness, step, coverage, clearance", "the measure that limits the score", func(r *row) string { return string(r.LimitedBy) })),
 		number("footprint_radius_m", "m", metreDigits, "> 0", "radius of the disc", func(r *row) float64 { return r.radiusM }),
 		null("it lies in no zone", text("zone", "an id of layer zones", "zone that holds its centre", func(r *row) string { return r.zone })),
