@@ -135,7 +135,7 @@ func printSummary(w io.Writer, s *summary) {
 	}
 	if l := s.Slopes; l != nil {
 		row("  slope", "%.1f° in the median, 10 %% below %.1f°, 10 %% above %.1f°, at most %.1f° (%s)", l.MedianDeg, l.P10Deg, l.P90Deg, l.MaxDeg, l.Method)
-		row("  steep", "%.1f %% above 45°, %.1f %% above 60°", 100*l.Above45, 100*l.Above60)
+		row("  steep", "%.1f %% above 45°, %.1f %% above 60°, of the %d cells with all eight neighbours", 100*l.Above45, 100*l.Above60, l.Cells)
 		row("  ruggedness", "%.3g m in the median (%s)", l.RuggednessM, l.RuggednessBy)
 	}
 	for _, c := range s.Classes {

@@ -13,7 +13,7 @@ import (
 // eight neighbours.
 type Slopes struct {
 	Method       string  `json:"method"`
-	Cells        int64   `json:"cells"`
+	Cells        int64   `json:"cells"` // those with all eight neighbours; the others are left out
 	P10Deg       float64 `json:"p10_deg"`
 	MedianDeg    float64 `json:"median_deg"`
 	P90Deg       float64 `json:"p90_deg"`

@@ -5,11 +5,15 @@ import (
 	"fmt"
 	"math"
 	"os"
+	"os/exec"
 	"path/filepath"
+	"slices"
+	"strconv"
 	"strings"
 	"testing"
 
 	"ledgework/terrain/gdal"
+	"ledgework/terrain/survey"
 )
 
 // writeGrid writes an ASCII grid of the plane that rises by east and north, in
@@ -72,6 +76,91 @@ func TestSlopesOf(t *testing.T) {
 			}
 		})
 	}
+}
+
+// Real grids in metres, against GDAL's gdaldem, which goes by Horn's formula too
+// and leaves out cells without all eight neighbours.
+func TestSlopesAgainstGDAL(t *testing.T) {
+	root := os.Getenv("LEDGEWORK_DATA")
+	if root == "" {
+		t.Skip("LEDGEWORK_DATA is not set: it names a folder of real surveys")
+	}
+	program, err := exec.LookPath("gdaldem")
+	if err != nil {
+		t.Skip("gdaldem is not installed")
+	}
+	for _, file := range []struct {
+		name string
+		band int // gdaldem takes the first where it is not told
+	}{{"alps_rgi11_01270_46m.tif", 1}, {"ecuador_ta_10m_5band.tif", 4}, {"south_glacier_20m.tif", 1}} {
+		t.Run(file.name, func(t *testing.T) {
+			path := filepath.Join(root, "terrain", file.name)
+			s, err := survey.Inspect(t.Context(), path, survey.Options{Band: file.band})
+			if err != nil {
+				t.Fatal(err)
+			}
+			got, err := slopesOf(t.Context(), path, file.band, s.CRS.WKT)
+			if err != nil {
+				t.Fatal(err)
+			}
+			want := slopesByGDAL(t, program, path, file.band)
+			share := func(deg float64) float64 {
+				at, _ := slices.BinarySearch(want, deg)
+				return float64(len(want)-at) / float64(len(want))
+			}
+			quantile := func(q float64) float64 { return want[max(0, int(math.Ceil(q*float64(len(want))))-1)] }
+			if int(got.Cells) != len(want) {
+				t.Errorf("%d cells, GDAL has %d", got.Cells, len(want))
+			}
+			const tol = 0.011 // the bins' width, and the rounding of float32
+			for _, c := range []struct {
+				what           string
+				got, want, tol float64
+			}{
+				{"p10", got.P10Deg, quantile(0.1), tol},
+				{"median", got.MedianDeg, quantile(0.5), tol},
+				{"p90", got.P90Deg, quantile(0.9), tol},
+				{"max", got.MaxDeg, want[len(want)-1], tol},
+				{"above 45°", got.Above45, share(45), 1e-4},
+				{"above 60°", got.Above60, share(60), 1e-4},
+			} {
+				if !(math.Abs(c.got-c.want) <= c.tol) {
+					t.Errorf("%s: got %g, want %g", c.what, c.got, c.want)
+				}
+			}
+		})
+	}
+}
+
+// slopesByGDAL are the slopes of a grid's cells in degrees, ascending.
+func slopesByGDAL(t *testing.T, program, path string, band int) []float64 {
+	t.Helper()
+	out := filepath.Join(t.TempDir(), "slope.tif")
+	if text, err := exec.CommandContext(t.Context(), program, "slope", "-q", "-b", strconv.Itoa(band), path, out).CombinedOutput(); err != nil {
+		t.Fatalf("gdaldem: %v\n%s", err, text)
+	}
+	ds, err := gdal.Open(out)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer ds.Close()
+	slope, err := ds.Band(1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	w, h := ds.Size()
+	values, valid := make([]float64, w*h), make([]uint8, w*h)
+	if err := slope.ReadMasked(0, 0, w, h, values, valid); err != nil {
+		t.Fatal(err)
+	}
+	var slopes []float64
+	for i, v := range values {
+		if valid[i] != 0 {
+			slopes = append(slopes, v)
+		}
+	}
+	slices.Sort(slopes)
+	return slopes
 }
 
 func TestSlopesOfTooSmallGrid(t *testing.T) {
