@@ -7,6 +7,7 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"runtime"
 	"slices"
 	"strings"
 
@@ -40,8 +41,9 @@ func expandOne(base, pattern string) ([]string, error) {
 	if strings.TrimSpace(pattern) == "" {
 		return nil, errors.New("survey: an empty file name; name a file, a folder or a pattern such as scan/*.las")
 	}
-	full := filepath.Clean(pattern)
+	full, glob := filepath.Clean(pattern), filepath.Clean(pattern)
 	if !filepath.IsAbs(full) {
+		glob = filepath.Join(quoteMeta(base), full)
 		full = filepath.Join(base, full)
 	}
 	info, err := os.Stat(full)
@@ -63,7 +65,7 @@ func expandOne(base, pattern string) ([]string, error) {
 		return nil, fmt.Errorf("survey: %q: %w; names are relative to %s", pattern, fs.ErrNotExist, base)
 	}
 
-	matches, err := filepath.Glob(full)
+	matches, err := filepath.Glob(glob)
 	if err != nil {
 		return nil, fmt.Errorf("survey: pattern %q: %w", pattern, err)
 	}
@@ -83,14 +85,25 @@ func expandOne(base, pattern string) ([]string, error) {
 	return found, nil
 }
 
+// quoteMeta makes a folder's own name match itself in a glob. Windows has no
+// way to say so.
+func quoteMeta(dir string) string {
+	if runtime.GOOS == "windows" {
+		return dir
+	}
+	return strings.NewReplacer(`\`, `\\`, `*`, `\*`, `?`, `\?`, `[`, `\[`).Replace(dir)
+}
+
 // surveysBelow lists the survey files below dir.
 func surveysBelow(dir string) ([]string, error) {
+	// WalkDir does not enter a symbolic link, unless it ends like a folder.
+	root := strings.TrimSuffix(dir, string(filepath.Separator)) + string(filepath.Separator)
 	var found []string
-	err := filepath.WalkDir(dir, func(path string, d fs.DirEntry, err error) error {
+	err := filepath.WalkDir(root, func(path string, d fs.DirEntry, err error) error {
 		if err != nil {
 			return err
 		}
-		hidden := strings.HasPrefix(d.Name(), ".") && path != dir
+		hidden := strings.HasPrefix(d.Name(), ".") && path != root
 		switch {
 		case d.IsDir() && hidden:
 			return fs.SkipDir

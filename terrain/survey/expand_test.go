@@ -1,7 +1,9 @@
 package survey
 
 import (
+	"os"
 	"path/filepath"
+	"runtime"
 	"slices"
 	"strings"
 	"testing"
@@ -62,6 +64,26 @@ func TestExpandNamesThePatternThatMatchesNothing(t *testing.T) {
 	} {
 		if _, err := Expand(dir, []string{pattern}); err == nil || !strings.Contains(err.Error(), want) {
 			t.Errorf("%q: error %v lacks %q", pattern, err, want)
+		}
+	}
+}
+
+// The name of the folder itself used to be read as a part of the pattern, and a
+// link to a folder was said to hold no survey.
+func TestExpandTakesTheFolderAsItIs(t *testing.T) {
+	if runtime.GOOS == "windows" {
+		t.Skip("a folder's name cannot be quoted in a pattern, and links need rights")
+	}
+	dir := filepath.Join(t.TempDir(), `head [1] *?\ é`)
+	want := writeFile(t, dir, "scan/a.las", "x")
+	link := filepath.Join(dir, "link")
+	if err := os.Symlink("scan", link); err != nil {
+		t.Fatal(err)
+	}
+	for pattern, want := range map[string]string{"scan/*.las": want, "scan": want, "link": filepath.Join(link, "a.las")} {
+		got, err := Expand(dir, []string{pattern})
+		if err != nil || !slices.Equal(got, []string{want}) {
+			t.Errorf("%q: got %q, %v, want %q", pattern, got, err, want)
 		}
 	}
 }
