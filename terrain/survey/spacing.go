@@ -230,8 +230,8 @@ func (s *sample) median() float64 {
 // nearest returns the distance to the nearest other place in the same cube for
 // every point that is an eighth of edge away from the cube's faces.
 func (s *sample) nearest(edge float64) []float64 {
-	axis := s.widest()
-	at := func(p place) float64 { return [3]float64{p.x, p.y, p.z}[axis] }
+	w := s.direction()
+	at := func(p place) float64 { return p.x*w[0] + p.y*w[1] + p.z*w[2] }
 	cube := func(p place) place {
 		return place{math.Floor(p.x / edge), math.Floor(p.y / edge), math.Floor(p.z / edge)}
 	}
@@ -285,8 +285,12 @@ func inner(p place, edge float64) bool {
 	return true
 }
 
-// widest is the axis along which the points spread most.
-func (s *sample) widest() int {
+// direction is that along which neighbours are looked for: a vector a little
+// shorter than 1, so that places are at least as far apart as along it. It is
+// near the axis along which the points spread most, and askew to all of them:
+// columns of a scan or walls of a building, which stand at one place of an axis
+// with half of the points, would each be searched from end to end.
+func (s *sample) direction() (w [3]float64) {
 	e := terrain.EmptyExtent()
 	for _, p := range s.points {
 		e.Add(p.x, p.y, p.z)
@@ -297,5 +301,6 @@ func (s *sample) widest() int {
 			axis = i
 		}
 	}
-	return axis
+	w[axis], w[(axis+1)%3], w[(axis+2)%3] = 0.9, 0.37, 0.23
+	return w
 }

@@ -6,6 +6,7 @@ import (
 	"math/rand/v2"
 	"slices"
 	"testing"
+	"time"
 
 	"ledgework/terrain"
 )
@@ -184,5 +185,27 @@ func TestMedianSpacingOfFiles(t *testing.T) {
 	}
 	if got, err := MedianSpacing(context.Background(), f, grid, StreamOptions{}, nil); err != nil || got != 7.5 {
 		t.Errorf("grid: got %g, want 7.5, error %v", got, err)
+	}
+}
+
+// Two columns of points took a minute: neighbours were looked for along the
+// axis between the columns.
+func TestMedianSpacingOfTwoColumns(t *testing.T) {
+	const n = spacingBudget / 2
+	points := make([][3]float64, 0, 2*n)
+	for i := range n {
+		z := 0.01 * float64(i)
+		points = append(points, [3]float64{0, 0, z}, [3]float64{2000, 0, z})
+	}
+	s := newSample(frameOf(points))
+	s.add(batchOf(points))
+	start := time.Now()
+	if got := s.median(); math.Abs(got-0.01) > 1e-9 {
+		t.Errorf("got %g, want 0.01", got)
+	}
+	// Milliseconds where each point looks at few others, 10^10 steps where it
+	// looks at its whole column.
+	if took := time.Since(start); took > 10*time.Second {
+		t.Errorf("took %v", took)
 	}
 }
