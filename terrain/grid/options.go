@@ -8,6 +8,11 @@ type Options struct {
 	// 1. The default is 0: the only band, or else the one whose name or unit
 	// says elevation, or else the first, which a note in the header then says.
 	Band int
+
+	// CRS takes the place of the file's own in what unit heights are delivered
+	// in: EPSG:n, WKT or PROJJSON. The default is the file's own. The header
+	// keeps the latter.
+	CRS string
 }
 
 // Validate checks the options.

@@ -1,6 +1,7 @@
 package grid
 
 import (
+	"cmp"
 	"fmt"
 	"io"
 	"math"
@@ -40,7 +41,7 @@ type reader struct {
 }
 
 // Open opens the elevation grid at path. Heights are delivered in the vertical
-// unit of the file's CRS, or if it has none in its horizontal unit, or if that
+// unit of the CRS, the file's own or the given one, or if it has none in its horizontal unit, or if that
 // is degrees or unknown in metres: a band that states another unit is converted
 // and a note in the header says so. Cells that hold the nodata value, are
 // masked out or not finite give no point.
@@ -74,7 +75,7 @@ func (r *reader) start(opts Options) error {
 	if err := r.place(); err != nil {
 		return err
 	}
-	if err := r.heights(); err != nil {
+	if err := r.heights(opts.CRS); err != nil {
 		return err
 	}
 	if n := band.BlockBytes(); n > maxBlockBytes {
@@ -147,8 +148,9 @@ func (r *reader) place() error {
 // and need not round both sides alike.
 const squareTolerance = 1e-5
 
-// heights finds the factor and summand of heights.
-func (r *reader) heights() error {
+// heights finds the factor and summand of heights, given what takes the place
+// of the file's CRS, if anything does.
+func (r *reader) heights(given string) error {
 	if r.band.Complex() {
 		return &terrain.UnsupportedError{Format: "grid", Feature: fmt.Sprintf("%s: a band of complex numbers (%s)", r.path, r.band.DataType()),
 			Remedy: "choose a band of real numbers"}
@@ -158,7 +160,11 @@ func (r *reader) heights() error {
 		return &terrain.FormatError{Format: "grid", Place: r.path, Reason: fmt.Sprintf("heights are scaled by %g and offset by %g", r.scale, r.offset)}
 	}
 	if metres, ok := unitMetres(r.band.Unit()); ok {
-		unit, name, err := heightUnit(r.ds.CRS())
+		unit, name, err := heightUnit(cmp.Or(given, r.ds.CRS()))
+		if err != nil && given != "" {
+			// Not the file's fault, hence no FormatError.
+			return fmt.Errorf("grid: %s: the given CRS can't be understood: %s; give EPSG:n, WKT or PROJJSON", r.path, err.Error())
+		}
 		if err != nil {
 			return err
 		}

@@ -180,6 +180,33 @@ func TestHeights(t *testing.T) {
 	}
 }
 
+// Heights used to be converted to the unit of the file's CRS where another one
+// was given, and then taken to be in that one's: wrong by the ratio of the two.
+func TestHeightsWithGivenCRS(t *testing.T) {
+	const usFoot = 1200.0 / 3937
+	for _, tt := range []struct {
+		name, srs, unit, crs string
+		want                 float64 // of the stored 1.5
+	}{
+		{"feet on a given CRS in feet", "", "US survey foot", "EPSG:2225", 1.5},
+		{"metres on a given CRS in feet", "", "m", "EPSG:2225", 1.5 / usFoot},
+		{"metres for a file in feet", "<SRS>EPSG:2225</SRS>", "m", "EPSG:32610", 1.5},
+		{"given heights in metres", "", "US survey foot", "EPSG:2225+5703", 1.5 * usFoot},
+	} {
+		t.Run(tt.name, func(t *testing.T) {
+			r := open(t, vrtFile(t, northUp, tt.srs, "<UnitType>"+tt.unit+"</UnitType>", ""), Options{CRS: tt.crs})
+			if got := readAll(t, r, 10)[0].z; math.Abs(got-tt.want) > 1e-12*tt.want {
+				t.Errorf("height %.12g, want %.12g", got, tt.want)
+			}
+		})
+	}
+	_, err := Open(vrtFile(t, northUp, "", "<UnitType>m</UnitType>", ""), Options{CRS: "EPSG:1"})
+	var format *terrain.FormatError
+	if err == nil || errors.As(err, &format) || !strings.Contains(err.Error(), "the given CRS") {
+		t.Errorf("error %v", err)
+	}
+}
+
 func TestOpenRefuses(t *testing.T) {
 	tests := []struct {
 		name, path string

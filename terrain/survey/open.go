@@ -68,7 +68,7 @@ func open(path string, opts Options) (*file, error) {
 	case err != nil:
 		return nil, f.wrap(err)
 	case known == "grid":
-		f.r, err = grid.Open(path, grid.Options{Band: opts.Band})
+		f.r, err = grid.Open(path, grid.Options{Band: opts.Band, CRS: opts.CRS})
 		if err != nil {
 			return nil, f.wrap(gridError(head, err))
 		}

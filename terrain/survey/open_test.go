@@ -3,6 +3,7 @@ package survey
 import (
 	"errors"
 	"io"
+	"math"
 	"os"
 	"path/filepath"
 	"strings"
@@ -160,4 +161,21 @@ func FuzzOpen(f *testing.F) {
 			}
 		}
 	})
+}
+
+// A grid in feet with a CRS given in feet came out a third as high.
+func TestGridInFeetWithGivenCRS(t *testing.T) {
+	const usFoot = 1200.0 / 3937
+	dir := t.TempDir()
+	writeFile(t, dir, "dem.asc", "ncols 2\nnrows 2\nxllcorner 6000000\nyllcorner 2100000\ncellsize 3\n100 100\n100 100\n")
+	path := writeFile(t, dir, "dem.vrt", `<VRTDataset rasterXSize="2" rasterYSize="2"><GeoTransform>6000000,3,0,2100006,0,-3</GeoTransform>`+
+		`<VRTRasterBand dataType="Float32" band="1"><UnitType>US survey foot</UnitType>`+
+		`<SimpleSource><SourceFilename relativeToVRT="1">dem.asc</SourceFilename><SourceBand>1</SourceBand></SimpleSource></VRTRasterBand></VRTDataset>`)
+	f, err := Plan(t.Context(), []Source{{Path: path, CRS: "EPSG:2227"}}, "auto")
+	if err != nil {
+		t.Fatal(err)
+	}
+	if got, want := f.Extent.Max[2], 100*usFoot; math.Abs(got-want) > 1e-9 {
+		t.Errorf("height %g m, want %g", got, want)
+	}
 }
