@@ -22,6 +22,7 @@ type system struct {
 	unitName string
 	vertical float64 // metres per unit of height; 0 if the CRS says nothing
 	heights  string  // name of the vertical CRS, empty if the CRS says nothing
+	turned   bool    // axes point west or south
 	special  bool    // spherical web map projection, whose scale is off by 1/cos(latitude)
 }
 
@@ -71,6 +72,7 @@ func parseSystem(text string) (system, error) {
 	if s.kind == local && (s.name == "unnamed" || s.name == "unknown") {
 		s.crs, s.wkt, s.name = nil, "", "" // lengths in some unit, and that is all
 	}
+	s.turned = s.kind == projected && axesTurned(s.wkt)
 	s.special = s.kind == projected && strings.Contains(s.wkt, "Pseudo Mercator")
 	return s, nil
 }

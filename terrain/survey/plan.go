@@ -33,12 +33,12 @@ const (
 
 // Plan chooses the working CRS of the sources and how each gets there. want is
 // "auto" (or empty), or the CRS to work in as EPSG:n, WKT or PROJJSON. It must
-// be projected; one in feet is taken with its axes in metres.
+// be projected, its axes east and north; one in feet is taken with its axes in metres.
 //
 // The automatic choice is the CRS of the first source that has one, if it is
-// projected, in metres once its axes are converted, and true to scale at the
-// site. Longitude and latitude, geocentric coordinates, and projections whose
-// scale is off, such as Web Mercator, go to the UTM zone (or UPS) of the
+// projected, in metres once its axes are converted, points east and north, and
+// is true to scale at the site. Longitude and latitude, geocentric coordinates, and projections whose
+// scale is off, such as Web Mercator, or whose axes point elsewhere, go to the UTM zone (or UPS) of the
 // middle of all sources. Without any CRS the coordinates are local, unless
 // they can only be degrees: then WGS 84 is assumed, and a note says so. A
 // source without a CRS among others that have one is taken to be in the
@@ -136,6 +136,9 @@ func (f *Frame) workingSystem(probes []*probe, want string) (system, error) {
 		if s.kind != projected {
 			return system{}, fmt.Errorf("survey: the working CRS %q is not a projected one; leave crs: auto, and give the CRS of the coordinates with the surveys", s.name)
 		}
+		if s.turned {
+			return system{}, fmt.Errorf("survey: the working CRS %q has axes that point west or south; leave crs: auto, or give one with axes east and north", s.name)
+		}
 		return f.inMetres(s)
 	}
 
@@ -155,10 +158,13 @@ func (f *Frame) workingSystem(probes []*probe, want string) (system, error) {
 		switch {
 		case err != nil:
 			return system{}, fmt.Errorf("%s: survey: %w; check its CRS", first.src.Path, err)
+		case s.turned:
+			f.note("%q has axes that point west or south, with which azimuths would be wrong", s.name)
 		case !s.special && off <= maxScaleError:
 			return f.inMetres(s)
+		default:
+			f.note("%q is not true to scale here (off by %.1f %%)", s.name, 100*off)
 		}
-		f.note("%q is not true to scale here (off by %.1f %%)", s.name, 100*off)
 	}
 	lon, lat, err := middle(probes)
 	if err != nil {

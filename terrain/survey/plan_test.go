@@ -317,3 +317,49 @@ func TestHeaderExtentThatLies(t *testing.T) {
 		t.Errorf("notes %q", f.Notes)
 	}
 }
+
+// Westing and southing used to be worked in as if they were easting and
+// northing: azimuths half a turn off in the one country, the ground mirrored in
+// the other. Directions are from the axes in the EPSG data set.
+func TestPlanOfTurnedAxes(t *testing.T) {
+	for _, tt := range []struct {
+		crs, code string
+		at        [3]float64
+		x, y      [2]float64 // east and north of 100 units along each axis
+		tol       float64    // of which convergence takes its part
+	}{
+		{"EPSG:2048", "EPSG:32734", [3]float64{-50000, 3700000, 100}, [2]float64{-100, 0}, [2]float64{0, -100}, 3},  // Hartebeesthoek94 / Lo19: west, south
+		{"EPSG:5513", "EPSG:32633", [3]float64{1040000, 740000, 100}, [2]float64{0, -100}, [2]float64{-100, 0}, 20}, // S-JTSK / Krovak: south, west
+		{"EPSG:5514", "EPSG:5514", [3]float64{-740000, -1040000, 100}, [2]float64{100, 0}, [2]float64{0, 100}, 0},   // the same, east and north
+	} {
+		t.Run(tt.crs, func(t *testing.T) {
+			hi := [3]float64{tt.at[0] + 100, tt.at[1] + 100, tt.at[2] + 10}
+			f, err := planFakes("auto", map[string]*fakeReader{"a": boxReader(tt.crs, 0, tt.at, hi)}, "a")
+			if err != nil {
+				t.Fatal(err)
+			}
+			if f.AuthorityCode != tt.code {
+				t.Fatalf("worked in %q, want %q", f.AuthorityCode, tt.code)
+			}
+			tr, err := f.Transformer(Source{Path: "a"})
+			if err != nil {
+				t.Fatal(err)
+			}
+			defer tr.Close()
+			b := batchOf([][3]float64{tt.at, {hi[0], tt.at[1], 0}, {tt.at[0], hi[1], 0}})
+			if err := tr.Apply(b); err != nil {
+				t.Fatal(err)
+			}
+			for i, want := range [2][2]float64{tt.x, tt.y} {
+				e, n := b.X[i+1]-b.X[0], b.Y[i+1]-b.Y[0]
+				if math.Hypot(e-want[0], n-want[1]) > tt.tol {
+					t.Errorf("100 along axis %d go (%.1f, %.1f) east and north, want %v", i, e, n, want)
+				}
+			}
+		})
+	}
+	_, err := planFakes("EPSG:2048", map[string]*fakeReader{"a": boxReader("", 0, [3]float64{}, [3]float64{9, 9, 9})}, "a")
+	if err == nil || !strings.Contains(err.Error(), "point west or south") {
+		t.Errorf("error %v", err)
+	}
+}

@@ -78,6 +78,40 @@ func (n *node) find(keys ...string) *node {
 	return nil
 }
 
+// axesTurned reports whether an axis of the projected CRS wkt points west, or
+// one alone south, as those of southern Africa and of the Czech lands do. In
+// such coordinates azimuths are wrong, and where they are southing and westing
+// the ground is its own mirror image. The axes of a polar grid, which may both
+// point south along meridians, are not meant.
+func axesTurned(wkt string) bool {
+	root, ok := parseWKT(wkt)
+	if !ok {
+		return false
+	}
+	crs := root.find("PROJCRS")
+	if crs == nil {
+		return false
+	}
+	west, south := 0, 0
+	for _, axis := range crs.kids {
+		if axis.key != "AXIS" || axis.find("MERIDIAN") != nil {
+			continue
+		}
+		end := axis.to - 1
+		if len(axis.kids) > 0 {
+			end = axis.kids[0].from
+		}
+		head := wkt[axis.from:end] // AXIS["name (abbreviation)",direction,
+		switch strings.ToLower(strings.Trim(head[strings.LastIndexByte(head, '"')+1:], ", \n")) {
+		case "west":
+			west++
+		case "south":
+			south++
+		}
+	}
+	return west > 0 || south == 1
+}
+
 // metricWKT returns the projected CRS wkt with its axes in metres: the same
 // projection on the same datum, so that coordinates differ by the ratio of the
 // units alone. In ISO 19162 every parameter of the conversion carries its own

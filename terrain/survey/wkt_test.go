@@ -56,3 +56,19 @@ func FuzzParseWKT(f *testing.F) {
 		check(root, 0, len(s))
 	})
 }
+
+func TestAxesTurned(t *testing.T) {
+	for crs, want := range map[string]bool{
+		"EPSG:2048": true, "EPSG:5513": true, "EPSG:2218": true, // west and south; south and west; north and west
+		"EPSG:32633": false, "EPSG:2193": false, "EPSG:5514": false, "EPSG:2227": false,
+		"EPSG:5041": false, "EPSG:5042": false, "EPSG:3031": false, "EPSG:3995": false, // polar
+		"EPSG:4326": false,
+	} {
+		if got := axesTurned(wktOf(t, crs)); got != want {
+			t.Errorf("%s: got %v", crs, got)
+		}
+	}
+	if axesTurned("") || axesTurned("PROJCRS[") {
+		t.Error("no WKT has turned axes")
+	}
+}
