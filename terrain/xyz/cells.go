@@ -30,10 +30,31 @@ func nextCell(b []byte, sep byte) (cell, rest []byte, ok bool) {
 		return unquote(cell), b[i:], true
 	}
 	i := bytes.IndexByte(b, sep)
+	if i >= 0 && bytes.HasPrefix(trim(b), []byte{'"'}) {
+		i = bareIndex(b, sep)
+	}
 	if i < 0 {
 		return unquote(trim(b)), nil, true
 	}
 	return unquote(trim(b[:i])), b[i+1:], true
+}
+
+// bareIndex is the place of the first c that doesn't stand between quotes, -1
+// for none. A quote without a partner is no quote.
+func bareIndex(b []byte, c byte) int {
+	quoted := false
+	for i, v := range b {
+		switch {
+		case v == '"':
+			quoted = !quoted
+		case v == c && !quoted:
+			return i
+		}
+	}
+	if quoted {
+		return bytes.IndexByte(b, c)
+	}
+	return -1
 }
 
 func unquote(b []byte) []byte {
@@ -57,10 +78,10 @@ func cells(line []byte, sep byte) [][]byte {
 
 // separator tells what stands between the cells of a line.
 func separator(line []byte) byte {
-	if bytes.IndexByte(line, ';') >= 0 {
+	if bareIndex(line, ';') >= 0 {
 		return ';'
 	}
-	if bytes.IndexByte(line, ',') >= 0 && !decimalCommas(line) {
+	if bareIndex(line, ',') >= 0 && !decimalCommas(line) {
 		return ','
 	}
 	if bytes.IndexByte(line, '\t') >= 0 {

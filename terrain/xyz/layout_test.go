@@ -55,6 +55,9 @@ func TestLayouts(t *testing.T) {
 		{"1, 2, 3,\n4.5 ,-5 ,6e1,\n", wish{format: "CSV text", points: -1}},
 		{"1;2;3\n4.5; -5; 6e1\n", wish{format: "CSV text", points: -1}},
 		{"\"1\",\"2\",\"3\"\n\"4.5\",\"-5\",\"6e1\"\n", wish{format: "CSV text", points: -1}},
+		// A separator between quotes is text.
+		{"\"note\",\"x\",\"y\",\"z\"\n\"a; b, c\",\"1\",\"2\",\"3\"\n\"5\"\" pipe, \"\"x\"\"\",4.5,-5,6e1\n", wish{format: "CSV text", points: -1}},
+		{"note,x,y,z\n5\" pipe,1,2,3\n\"odd,4.5,-5,6e1\n", wish{format: "CSV text", points: -1}},
 		{"X,Y,Z\n1,2,3\n4.5,-5,6e1\n", wish{format: "CSV text", points: -1}},
 		{"Northing;Height;name;EASTING\n2;3;a;1\n-5;6e1;b;4.5\n", wish{format: "CSV text", points: -1}},
 		{"\"n [m]\",\"h [m]\",\"e [m]\"\n2,3,1\n-5,6e1,4.5\n", wish{format: "CSV text", points: -1}},
