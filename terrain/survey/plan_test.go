@@ -363,3 +363,21 @@ func TestPlanOfTurnedAxes(t *testing.T) {
 		t.Errorf("error %v", err)
 	}
 }
+
+// A header may promise any number of points: what the file has room for counts.
+func TestPlanOfCountThatLies(t *testing.T) {
+	readers := make(map[string]*fakeReader)
+	for _, path := range []string{"a", "b"} {
+		r := boxReader("EPSG:32633", 0, [3]float64{500000, 5000000, 100}, [3]float64{500100, 5000100, 150})
+		r.header.Points, r.header.Bytes = math.MaxInt64, 1000
+		r.header.Extent = &terrain.Extent{Min: [3]float64{500000, 5000000, 100}, Max: [3]float64{500100, 5000100, 150}}
+		readers[path] = r
+	}
+	f, err := planFakes("auto", readers, "a", "b")
+	if err != nil {
+		t.Fatal(err)
+	}
+	if f.Points != 100 {
+		t.Errorf("%d points, want the 50 records of 20 bytes that either has room for", f.Points)
+	}
+}

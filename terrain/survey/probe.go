@@ -56,6 +56,11 @@ func examine(ctx context.Context, src Source, r terrain.Reader, known systems) (
 		}
 		if plausible(*e) && holds(*e, b) {
 			p.extent = *e
+			// A count beyond the file's size would make the points of all
+			// sources overflow, and the search for their spacing too narrow.
+			if most := p.header.Bytes / minRecordBytes; most > 0 {
+				p.points = min(p.points, most)
+			}
 			return p, nil
 		}
 		p.note("the header's extent can't be (%s); the points were read for it", describeExtent(*e))
