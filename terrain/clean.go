@@ -34,8 +34,9 @@ func Clean(v *Voxels) (*Voxels, Cleaned) {
 	var dropped Cleaned
 	drop := make([]bool, v.Len())
 	survey := x.usualOf(sample(v.Len()))
+	near := make([]int32, 0, isolatedNeighbours)
 	for i := range v.Cells {
-		if !x.isolated(i, survey) {
+		if !x.isolated(i, survey, near) {
 			continue
 		}
 		drop[i] = true
@@ -65,9 +66,10 @@ func sample(n int) []int32 {
 
 func (x *Index) usualOf(which []int32) usual {
 	points, neighbours := make([]int64, len(which)), make([]int, len(which))
+	near := make([]int32, 0, usualTimes*isolatedNeighbours)
 	for i, w := range which {
 		points[i] = x.voxels.Moments[w].N
-		neighbours[i] = len(x.around(int(w), isolatedReach, usualTimes*isolatedNeighbours))
+		neighbours[i] = len(x.around(near, int(w), isolatedReach, usualTimes*isolatedNeighbours))
 	}
 	return usual{lowerMedian(points), lowerMedian(neighbours)}
 }
@@ -81,21 +83,22 @@ func lowerMedian[T int | int64](v []T) T {
 	return v[(len(v)-1)/2]
 }
 
-func (x *Index) isolated(i int, u usual) bool {
-	if len(x.around(i, isolatedReach, isolatedNeighbours)) >= isolatedNeighbours {
+// isolated uses the room for isolatedNeighbours in near.
+func (x *Index) isolated(i int, u usual, near []int32) bool {
+	if len(x.around(near, i, isolatedReach, isolatedNeighbours)) >= isolatedNeighbours {
 		return false
 	}
-	if near := x.around(i, usualReach, -1); len(near) > 0 {
+	if near := x.around(nil, i, usualReach, -1); len(near) > 0 {
 		u = x.usualOf(near)
 	}
 	return usualTimes*x.voxels.Moments[i].N < u.points || u.neighbours >= usualTimes*isolatedNeighbours
 }
 
-// around returns the other voxels whose centres lie within reach cells of
-// voxel i's, stopping at the given number of them (-1 for all).
-func (x *Index) around(i int, reach int32, enough int) []int32 {
+// around appends to dst, which is empty, the other voxels whose centres lie
+// within reach cells of voxel i's, stopping at the given number of them (-1 for
+// all).
+func (x *Index) around(dst []int32, i int, reach int32, enough int) []int32 {
 	c := x.voxels.Cells[i]
-	var found []int32
 	for k := c.K - reach; k <= c.K+reach; k++ {
 		for j := c.J - reach; j <= c.J+reach; j++ {
 			start, end := x.Row(j, k, c.I-reach, c.I+reach)
@@ -105,13 +108,13 @@ func (x *Index) around(i int, reach int32, enough int) []int32 {
 				if n == i || di*di+dj*dj+dk*dk > reach*reach {
 					continue
 				}
-				if found = append(found, int32(n)); len(found) == enough {
-					return found
+				if dst = append(dst, int32(n)); len(dst) == enough {
+					return dst
 				}
 			}
 		}
 	}
-	return found
+	return dst
 }
 
 // without returns a copy of v that lacks the marked voxels.

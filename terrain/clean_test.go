@@ -90,3 +90,29 @@ func TestCleanKeepsAttributesInStep(t *testing.T) {
 		t.Errorf("classes of %d points, intensities of %d; want 99, %d", classes, intensity, 99*98/2)
 	}
 }
+
+// Every voxel of a survey is looked at: none may cost memory of its own.
+func TestCleanAllocatesNothingPerVoxel(t *testing.T) {
+	count := func(n int) float64 {
+		var points []r3.Vec
+		for i := range n {
+			for j := range n {
+				points = append(points, r3.Vec{X: float64(i) + 0.5, Y: float64(j) + 0.5})
+			}
+		}
+		l, err := NewLattice(1)
+		if err != nil {
+			t.Fatal(err)
+		}
+		v, err := SumPoints(l, points)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return testing.AllocsPerRun(1, func() { Clean(v) })
+	}
+	// Lists that grow with the survey do so a few times more for 16 times as
+	// many voxels.
+	if small, large := count(50), count(200); large > small+50 {
+		t.Errorf("%g allocations for 2500 voxels, %g for 40000", small, large)
+	}
+}
