@@ -12,6 +12,7 @@ import (
 	"github.com/spf13/pflag"
 
 	"ledgework/cmd/internal/worksite"
+	"ledgework/terrain/grid"
 	"ledgework/terrain/survey"
 )
 
@@ -60,7 +61,7 @@ func runInspect(ctx context.Context, g *globals, opts InspectOptions, args []str
 		}
 		both := &summary{Summary: s}
 		if s.Cell > 0 && s.Unusable == "" {
-			both.Slopes, err = slopesOf(ctx, p, opts.Source.Band, s.CRS.WKT)
+			both.Slopes, err = slopesOf(ctx, p, grid.Options{Band: opts.Source.Band, CRS: opts.Source.CRS}, s.CRS.WKT)
 			if ctx.Err() != nil {
 				return ctx.Err()
 			}

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"cmp"
 	"context"
 	"math"
 
@@ -27,13 +28,13 @@ type Slopes struct {
 // slopesOf reads the grid at path once more, three rows at a time. Its positions
 // are in the given CRS, as WKT, or in metres where that is empty. It is nil where
 // no cell has eight neighbours.
-func slopesOf(ctx context.Context, path string, band int, crs string) (*Slopes, error) {
-	rows, err := grid.OpenRows(path, grid.Options{Band: band})
+func slopesOf(ctx context.Context, path string, opts grid.Options, crs string) (*Slopes, error) {
+	rows, err := grid.OpenRows(path, opts)
 	if err != nil {
 		return nil, err
 	}
 	defer rows.Close()
-	u, err := unitsOf(crs, rows.Header().CRS)
+	u, err := unitsOf(crs, cmp.Or(opts.CRS, rows.Header().CRS))
 	if err != nil {
 		return nil, err
 	}
@@ -81,8 +82,8 @@ type units struct {
 }
 
 // unitsOf are the units of positions in the CRS horizontal, and of the heights
-// that a grid with the CRS own delivers: in its vertical unit, else in its
-// horizontal one. Either may be empty.
+// that a grid delivers whose CRS, given or the file's, is own: in its vertical
+// unit, else in its horizontal one. Either may be empty.
 func unitsOf(horizontal, own string) (units, error) {
 	u := units{horizontal: 1, vertical: 1}
 	if horizontal != "" {

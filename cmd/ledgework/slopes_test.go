@@ -13,6 +13,7 @@ import (
 	"testing"
 
 	"ledgework/terrain/gdal"
+	"ledgework/terrain/grid"
 	"ledgework/terrain/survey"
 )
 
@@ -65,7 +66,7 @@ func TestSlopesOf(t *testing.T) {
 		{"degrees", writeGrid(t, 15, 60, 0.0001, 0.75*lon, lat), wktOf(t, "EPSG:4326")},
 	} {
 		t.Run(c.name, func(t *testing.T) {
-			s, err := slopesOf(context.Background(), c.path, 0, c.crs)
+			s, err := slopesOf(context.Background(), c.path, grid.Options{}, c.crs)
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -99,7 +100,7 @@ func TestSlopesAgainstGDAL(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			got, err := slopesOf(t.Context(), path, file.band, s.CRS.WKT)
+			got, err := slopesOf(t.Context(), path, grid.Options{Band: file.band}, s.CRS.WKT)
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -168,7 +169,21 @@ func TestSlopesOfTooSmallGrid(t *testing.T) {
 	if err := os.WriteFile(path, []byte("ncols 2\nnrows 2\nxllcorner 0\nyllcorner 0\ncellsize 1\n1 2\n3 4\n"), 0o600); err != nil {
 		t.Fatal(err)
 	}
-	if s, err := slopesOf(context.Background(), path, 0, ""); s != nil || err != nil {
+	if s, err := slopesOf(context.Background(), path, grid.Options{}, ""); s != nil || err != nil {
 		t.Errorf("%+v, %v; want none", s, err)
+	}
+}
+
+// The CRS that a user gives is the unit of heights too where nothing else says
+// it. They were taken as metres once, and 51° came out as 76°.
+func TestSlopesOfGivenCRSInFeet(t *testing.T) {
+	const feet = "EPSG:2227" // US survey feet
+	path := writeGrid(t, 6000000, 2000000, 10, 0.75, 1)
+	s, err := slopesOf(context.Background(), path, grid.Options{CRS: feet}, wktOf(t, feet))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if want := math.Atan(1.25) * 180 / math.Pi; math.Abs(s.MedianDeg-want) > 0.02 {
+		t.Errorf("median slope %g°, want %.2f°", s.MedianDeg, want)
 	}
 }
