@@ -25,7 +25,7 @@ bench: deps
 lint: deps
 	.ci/lint.sh
 
-# Every fuzz target for a few seconds; FUZZTIME=1m for longer.
+# Every fuzz target for 50 000 executions; FUZZTIME=1000000x for longer.
 fuzz: deps
 	.ci/fuzz.sh
 
